@@ -1,0 +1,35 @@
+"""Integral equations for mixtures of square-well spheres.
+
+Solves the Ornstein-Zernike equation with the MSA, Percus-Yevick, HNC and reference HNC closures and
+gives radial distribution functions, neighbour counts and thermodynamics with error bars.
+"""
+
+from ozsolve.closures import CLOSURES, HNC, MSA, PY, RHNC, Closure, get_closure
+from ozsolve.errors import InputError, NotConverged, OzsolveError
+from ozsolve.mixture import Mixture, State
+from ozsolve.potential import PairOverride, PairTable
+from ozsolve.solution import Solution, Stats
+from ozsolve.solver import DEFAULT_ACCURACY, solve
+from ozsolve.stopping import Status
+
+__all__ = [
+    "CLOSURES",
+    "Closure",
+    "DEFAULT_ACCURACY",
+    "HNC",
+    "InputError",
+    "MSA",
+    "Mixture",
+    "NotConverged",
+    "OzsolveError",
+    "PY",
+    "PairOverride",
+    "PairTable",
+    "RHNC",
+    "Solution",
+    "State",
+    "Stats",
+    "Status",
+    "get_closure",
+    "solve",
+]

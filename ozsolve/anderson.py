@@ -1,0 +1,90 @@
+"""Anderson acceleration of a batch of fixed points: frozen settings, explicit state.
+
+With f = G(x) - x and differences of the last `depth` steps dF, dG (newest against the one before),
+    theta = argmin |f - dF theta|,   x_next = G(x) - dG theta
+(Walker and Ni, SIAM J. Numer. Anal. 49 (2011) 1715, eq. 2.2 with full mixing).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ozsolve.potential import Array
+
+RIDGE = 1e-14
+"""Relative ridge on the small normal matrix: below the squared round-off of its entries."""
+
+
+@dataclass
+class History:
+    """Run state of one accelerated batch; shapes (b, depth, size), (b, depth, depth), (b, size)."""
+
+    d_residual: Array
+    d_image: Array
+    gram: Array
+    residual: Array
+    image: Array
+    filled: int = 0
+    restarts: int = 0
+
+    def keep(self, rows: Array) -> None:
+        """Drop the states of the batch that are not listed."""
+        for name in ("d_residual", "d_image", "gram", "residual", "image"):
+            setattr(self, name, getattr(self, name)[rows])
+
+
+@dataclass(frozen=True)
+class Anderson:
+    """Settings of the accelerator.
+
+    Attributes
+    ----------
+    depth : int
+        Remembered steps.
+    """
+
+    depth: int = 8
+
+    def start(self, x: Array) -> History:
+        """Fresh state for a batch x of shape (b, size)."""
+        batch, size = x.shape
+        shape = (batch, self.depth, size)
+        return History(
+            np.zeros(shape),
+            np.zeros(shape),
+            np.zeros((batch, self.depth, self.depth)),
+            np.zeros((batch, size)),
+            np.zeros((batch, size)),
+            filled=-1,
+        )
+
+    def step(self, image: Array, residual: Array, history: History) -> Array:
+        """The next x from G(x) and G(x) - x, both of shape (b, size)."""
+        if history.filled < 0:
+            history.filled = 0
+            following = image.copy()
+        else:
+            slot = history.filled % self.depth
+            difference = history.d_residual[:, slot]
+            np.subtract(residual, history.residual, out=difference)
+            np.subtract(image, history.image, out=history.d_image[:, slot])
+            history.filled += 1
+            used = min(history.filled, self.depth)
+            d_residual = history.d_residual[:, :used]
+            row = np.matmul(d_residual, difference[:, :, None])[:, :, 0]
+            row[:, slot] *= 1.0 + RIDGE
+            history.gram[:, slot, :used] = row
+            history.gram[:, :used, slot] = row
+            target = np.matmul(d_residual, residual[:, :, None])
+            try:
+                theta = np.linalg.solve(history.gram[:, :used, :used], target)
+            except np.linalg.LinAlgError:  # a repeated step: nothing to learn from, begin again
+                history.filled = 0
+                history.restarts += 1
+                theta = np.zeros((len(image), used, 1))
+            following = image - np.matmul(theta.transpose(0, 2, 1), history.d_image[:, :used])[:, 0]
+        history.residual[:] = residual
+        history.image[:] = image
+        return following

@@ -1,0 +1,291 @@
+"""The result of one solve: inputs, correlation functions, thermodynamics, error bars, how it went."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+
+from ozsolve.closures import Closure
+from ozsolve.continuation import Rung
+from ozsolve.equations import Equations, Fluid
+from ozsolve.grid import Grid
+from ozsolve.mixture import Mixture, State
+from ozsolve.oz import lowest_eigenvalue, unpack
+from ozsolve.potential import Array
+from ozsolve.stopping import Status
+from ozsolve.thermodynamics import (
+    Observables,
+    concentration_fluctuations,
+    g_segments,
+    shell_integrals,
+    structure_factors,
+)
+
+NEGATIVE_G = -1e-6
+"""g below this outside the core is reported as a defect of the closure."""
+
+
+@dataclass(frozen=True)
+class Stats:
+    """What a solve cost.
+
+    Attributes
+    ----------
+    steps : int
+        Evaluations of the fixed-point map, all grids and rungs together.
+    transforms : int
+        Stacks of radial transforms.
+    grid_points : int
+        Of the final grid.
+    spacing, extent : float
+        Of the final grid, in the smallest diameter.
+    rungs : tuple of Rung
+        Continuation steps, in order, with their ends.
+    restarts : int
+        Times the accelerator threw its history away.
+    seconds : float
+        Wall time.
+    """
+
+    steps: int
+    transforms: int
+    grid_points: int
+    spacing: float
+    extent: float
+    rungs: tuple[Rung, ...]
+    restarts: int
+    seconds: float
+
+
+@dataclass(frozen=True)
+class LevelResult:
+    """One grid's fixed point: what is needed to evaluate anything on that grid."""
+
+    equations: Equations
+    x: Array
+    reference: Array
+
+
+@dataclass(frozen=True, repr=False)
+class Solution:
+    """A solved (or failed) state. Pair arrays are (s, s) or (s, s, m), float64, read-only.
+
+    Lengths are in the mixture's length unit, energies in its energy unit. A failed solution has NaN
+    for every number; its correlation functions are those of the last good point on the path.
+
+    Attributes
+    ----------
+    mixture, state, closure, accuracy :
+        The inputs.
+    status : Status
+    message : str
+        One sentence about the end; for a failure it says where the branch ended.
+    branch_end_temperature : float or None
+        Lowest temperature that was solved on the way, when the branch ended.
+    errors : Observables
+        Absolute error bars, in reduced units (see `thermodynamics`).
+    residuals : tuple of float
+        max |G(x) - x| of the last iteration, the starting residual first.
+    stats : Stats
+    """
+
+    mixture: Mixture
+    state: State
+    closure: Closure
+    accuracy: float
+    status: Status
+    message: str
+    branch_end_temperature: float | None
+    length: float
+    observables: Observables = field(repr=False)
+    errors: Observables = field(repr=False)
+    fine: LevelResult = field(repr=False)
+    coarse: LevelResult | None = field(repr=False)
+    share: float
+    floor: float
+    residuals: tuple[float, ...] = field(repr=False)
+    stats: Stats = field(repr=False)
+
+    # --- grids and correlation functions -------------------------------------------------------
+
+    @cached_property
+    def r(self) -> Array:
+        """Radii, shape (m,), length unit."""
+        return _frozen(self.fine.equations.grid.r * self.length)
+
+    @cached_property
+    def k(self) -> Array:
+        """Wave numbers, shape (m,), inverse length unit."""
+        return _frozen(self.fine.equations.grid.k / self.length)
+
+    @cached_property
+    def gamma_r(self) -> Array:
+        """Indirect correlation h - c, shape (s, s, m)."""
+        return self._table(self.fine.equations.gamma(self.fine.x)[0])
+
+    @cached_property
+    def g_r(self) -> Array:
+        """Radial distribution functions, shape (s, s, m); exactly 0 inside the cores."""
+        fluid = self.fine.equations.fluid
+        inside, beyond = g_segments(self.fine.equations, self.fine.x)
+        r = self.fine.equations.grid.r
+        g = np.where(r < fluid.edge[0][:, None], inside, beyond)
+        return self._table(np.where(r < fluid.core[0][:, None], 0.0, g))
+
+    @cached_property
+    def h_r(self) -> Array:
+        """Total correlation g - 1, shape (s, s, m)."""
+        return _frozen(self.g_r - 1.0)
+
+    @cached_property
+    def c_r(self) -> Array:
+        """Direct correlation h - gamma, shape (s, s, m)."""
+        return _frozen(self.h_r - self.gamma_r)
+
+    @cached_property
+    def c_k(self) -> Array:
+        """Fourier transform of c, shape (s, s, m), cubed length unit."""
+        return self._table(self._reduced_c_k * self.length**3)
+
+    @cached_property
+    def _reduced_c_k(self) -> Array:
+        return self.fine.equations.direct_k(self.fine.x)[0]
+
+    @cached_property
+    def structure_factors(self) -> Array:
+        """S_ij(k) = delta_ij + sqrt(rho_i rho_j) h_ij(k), shape (s, s, m)."""
+        return _frozen(structure_factors(self._reduced_c_k, self.fine.equations.fluid.rho[0]))
+
+    @cached_property
+    def lowest_eigenvalue(self) -> float:
+        """Smallest eigenvalue of I - C(k) over all k; positive on the physical branch."""
+        equations = self.fine.equations
+        return float(lowest_eigenvalue(self._reduced_c_k[None], equations.root_rho)[0])
+
+    # --- numbers ---------------------------------------------------------------------------------
+
+    @property
+    def densities(self) -> Array:
+        """Number densities rho_i, shape (s,), inverse cubed length unit."""
+        return self.mixture.densities(self.state)
+
+    @property
+    def contact_values(self) -> Array:
+        """g_ij(sigma_ij+), shape (s, s)."""
+        return self.observables.contact
+
+    @property
+    def edge_values(self) -> tuple[Array, Array]:
+        """g_ij at the well edge from inside and from outside, each (s, s)."""
+        return self.observables.inner_edge, self.observables.outer_edge
+
+    @property
+    def internal_energy(self) -> float:
+        """U/N in the energy unit: -1/2 sum_ij x_i N_ij eps_ij."""
+        return self.observables.energy * self.state.temperature
+
+    @property
+    def virial_z(self) -> float:
+        """Z = P/(rho kT), virial route."""
+        return self.observables.virial
+
+    @property
+    def inverse_compressibility(self) -> float:
+        """1/(rho kT kappa_T) = 1 - sum_ij x_i x_j rho c_ij(0), compressibility route."""
+        return self.observables.inverse_compressibility
+
+    @property
+    def kirkwood_buff(self) -> Array:
+        """G_ij = int (g_ij - 1) d3r, shape (s, s), cubed length unit."""
+        return self.observables.h_zero * self.length**3
+
+    @property
+    def concentration_structure_factor(self) -> Array:
+        """S_cc(0) = N <dx_i dx_j>, shape (s, s); [0, 0] is the usual number for two species."""
+        return concentration_fluctuations(self.observables.h_zero, self.fine.equations.fluid.rho[0])
+
+    def shell_integral(self, radius: Array) -> tuple[Array, Array]:
+        """4 pi int_0^L_ij g_ij r^2 dr and its error bar, both (s, s), cubed length unit.
+
+        Parameters
+        ----------
+        radius : ndarray, shape (s, s)
+            L_ij in the length unit, symmetric.
+        """
+        i, j = np.triu_indices(self.mixture.species)
+        limit = np.asarray(radius, dtype=np.float64)[i, j] / self.length
+        value = shell_integrals(self.fine.equations, self.fine.x, limit)
+        if not self.status.usable:
+            value = np.full_like(value, np.nan)
+        bar = self.floor * np.abs(value)
+        if self.coarse is not None:
+            bar = bar + self.share * np.abs(value - shell_integrals(self.coarse.equations, self.coarse.x, limit))
+        return self._table(value * self.length**3), self._table(bar * self.length**3)
+
+    def running_shell_integral(self, radii: Array) -> Array:
+        """The same at many radii common to all pairs, shape (s, s, len(radii)), without error bars."""
+        pairs = self.fine.equations.shape[1]
+        rows = [
+            shell_integrals(self.fine.equations, self.fine.x, np.full(pairs, radius / self.length))
+            for radius in radii
+        ]
+        return self._table(np.array(rows).T * self.length**3)
+
+    @cached_property
+    def defects(self) -> tuple[str, ...]:
+        """Sentences about unphysical features of this closure at this state; empty when there are none."""
+        found = []
+        if self.status.usable and self.g_r.min() < NEGATIVE_G:
+            i, j, m = (int(v) for v in np.unravel_index(int(self.g_r.argmin()), self.g_r.shape))
+            found.append(
+                f"g_{i + 1}{j + 1}(r) is negative ({self.g_r[i, j, m]:.3g}) near r = {self.r[m]:.3g}: "
+                f"a defect of the {self.closure.title} closure at this state"
+            )
+        return tuple(found)
+
+    def _table(self, pairs: Array) -> Array:
+        if pairs.ndim == 1:
+            return _frozen(self.fine.equations.pair_table(pairs))
+        return _frozen(unpack(pairs, self.mixture.species))
+
+    def __repr__(self) -> str:
+        x = ", ".join(f"{v:.4g}" for v in self.state.mole_fractions)
+        lines = [
+            f"Solution: {self.status.value} ({self.closure.name})",
+            f"  kT = {self.state.temperature:.6g}, eta = {self.mixture.packing_fraction(self.state):.6g}, x = ({x})",
+            f"  residual {self.residuals[-1] if self.residuals else float('nan'):.1e} after {self.stats.steps} steps, "
+            f"{self.stats.grid_points} points of {self.stats.spacing:.4g}, {1e3 * self.stats.seconds:.1f} ms",
+        ]
+        if self.status.usable:
+            lines.append(
+                f"  U/N = {self.internal_energy:.6g}, Z(virial) = {self.virial_z:.6g}, "
+                f"1/(rho kT kappa) = {self.inverse_compressibility:.6g} (compressibility)"
+            )
+        else:
+            lines.append(f"  {self.message}")
+        return "\n".join(lines)
+
+
+def _frozen(array: Array) -> Array:
+    array = np.ascontiguousarray(array)
+    array.setflags(write=False)
+    return array
+
+
+def reduced_fluid(mixture: Mixture, state: State) -> tuple[Fluid, float]:
+    """The state in units of the smallest diameter and kT, as a batch of one; and that diameter."""
+    i, j = np.triu_indices(mixture.species)
+    length = float(np.min(np.diag(mixture.pairs.diameter)))
+    length = min(length, float(mixture.pairs.diameter.min()))
+    fluid = Fluid(
+        rho=(mixture.densities(state) * length**3)[None],
+        core=(mixture.pairs.diameter[i, j] / length)[None],
+        edge=(mixture.pairs.well_edge[i, j] / length)[None],
+        attraction=(mixture.pairs.well_depth[i, j] / state.temperature)[None],
+    )
+    return fluid, length
+
+
+__all__ = ["Grid", "LevelResult", "Solution", "Stats", "reduced_fluid"]
