@@ -23,6 +23,9 @@ from ozsolve.stopping import Status, StoppingRule
 STABILITY_FLOOR = 0.02
 """Lowest eigenvalue of I - C below which a branch that ends is said to end at the stability limit."""
 
+STALLED = 50
+"""A path out of rungs whose step has shrunk to this many shortest steps is at the end of its branch."""
+
 
 @dataclass(frozen=True)
 class Rung:
@@ -61,10 +64,10 @@ class Stride:
     """Step control of a path."""
 
     first: float = 0.25
-    shortest: float = 2e-4
+    shortest: float = 5e-4
     growth: float = 1.6
     bend: float = 0.5
-    max_rungs: int = 80
+    max_rungs: int = 60
     rung_tolerance: float = 1e-6
     rung_steps: int = 80
 
@@ -90,10 +93,11 @@ def follow(
     previous: tuple[float, Array] | None = None
     step = stride.first
     while path.reached < 1.0:
-        if len(path.rungs) >= stride.max_rungs:
+        exhausted = len(path.rungs) >= stride.max_rungs
+        if exhausted and step > STALLED * stride.shortest:
             path.status = Status.MAX_STEPS
             return path
-        if step < stride.shortest:
+        if exhausted or step < stride.shortest:
             path.status = _name_the_end(equations_at, path)
             return path
         t = min(path.reached + step, 1.0)

@@ -18,7 +18,7 @@ from ozsolve.continuation import Rung, Stride, follow
 from ozsolve.equations import Equations, Fluid
 from ozsolve.grid import Grid
 from ozsolve.iteration import Outcome, iterate
-from ozsolve.newton import rightmost_eigenvalue
+from ozsolve.newton import largest_real_eigenvalue
 from ozsolve.oz import lowest_eigenvalue
 from ozsolve.potential import Array
 from ozsolve.stopping import Status, StoppingRule
@@ -170,7 +170,7 @@ def _on_first_branch(equations: Equations, x: Array) -> bool:
     lowest = float(lowest_eigenvalue(equations.direct_k(x), equations.root_rho)[0])
     if lowest <= 0.0:
         return False
-    return lowest > NEAR_INSTABILITY or rightmost_eigenvalue(equations, x) < 1.0
+    return lowest > NEAR_INSTABILITY or largest_real_eigenvalue(equations, x) < 1.0
 
 
 def _sure(

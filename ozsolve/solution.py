@@ -14,6 +14,7 @@ from ozsolve.grid import Grid
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import lowest_eigenvalue, unpack
 from ozsolve.potential import Array
+from ozsolve.response import density_derivatives
 from ozsolve.stopping import Status
 from ozsolve.thermodynamics import (
     Observables,
@@ -86,6 +87,8 @@ class Solution:
         Lowest temperature that was solved on the way, when the branch ended.
     errors : Observables
         Absolute error bars, in reduced units (see `thermodynamics`).
+    relative_error : float
+        Bound on the relative numerical error of a coordination number.
     residuals : tuple of float
         max |G(x) - x| of the last iteration, the starting residual first.
     stats : Stats
@@ -103,8 +106,7 @@ class Solution:
     errors: Observables = field(repr=False)
     fine: LevelResult = field(repr=False)
     coarse: LevelResult | None = field(repr=False)
-    share: float
-    floor: float
+    relative_error: float
     residuals: tuple[float, ...] = field(repr=False)
     stats: Stats = field(repr=False)
 
@@ -196,6 +198,30 @@ class Solution:
         """1/(rho kT kappa_T) = 1 - sum_ij x_i x_j rho c_ij(0), compressibility route."""
         return self.observables.inverse_compressibility
 
+    @cached_property
+    def _density_derivatives(self) -> tuple[float, float]:
+        if not self.status.usable:
+            return float("nan"), float("nan")
+        return density_derivatives(self.fine.equations, self.fine.x, self.fine.reference)
+
+    @property
+    def virial_inverse_compressibility(self) -> float:
+        """1/(rho kT kappa_T) = d(rho Z)/d rho of the virial route; NaN for a failed solution."""
+        return self._density_derivatives[0]
+
+    @property
+    def energy_density_slope(self) -> float:
+        """d(U/N)/d ln rho at constant temperature and composition, energy unit."""
+        return self._density_derivatives[1] * self.state.temperature
+
+    @property
+    def route_gap(self) -> float:
+        """1/(rho kT kappa_T) of the virial route minus that of the compressibility route.
+
+        Zero for an exact theory; its size says how far to trust pressures of this closure.
+        """
+        return self.virial_inverse_compressibility - self.inverse_compressibility
+
     @property
     def kirkwood_buff(self) -> Array:
         """G_ij = int (g_ij - 1) d3r, shape (s, s), cubed length unit."""
@@ -219,9 +245,9 @@ class Solution:
         value = shell_integrals(self.fine.equations, self.fine.x, limit)
         if not self.status.usable:
             value = np.full_like(value, np.nan)
-        bar = self.floor * np.abs(value)
+        bar = self.relative_error * np.abs(value)
         if self.coarse is not None:
-            bar = bar + self.share * np.abs(value - shell_integrals(self.coarse.equations, self.coarse.x, limit))
+            bar = np.maximum(bar, 0.25 * np.abs(value - shell_integrals(self.coarse.equations, self.coarse.x, limit)))
         return self._table(value * self.length**3), self._table(bar * self.length**3)
 
     def running_shell_integral(self, radii: Array) -> Array:
@@ -261,7 +287,8 @@ class Solution:
         if self.status.usable:
             lines.append(
                 f"  U/N = {self.internal_energy:.6g}, Z(virial) = {self.virial_z:.6g}, "
-                f"1/(rho kT kappa) = {self.inverse_compressibility:.6g} (compressibility)"
+                f"1/(rho kT kappa) = {self.inverse_compressibility:.6g} (compressibility), "
+                f"{self.virial_inverse_compressibility:.6g} (virial)"
             )
         else:
             lines.append(f"  {self.message}")

@@ -7,7 +7,7 @@ energies in kT. `Observables` is what one grid gives; the solver makes error bar
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, fields
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -53,15 +53,66 @@ class Observables:
         nan = np.full((species, species), np.nan)
         return cls(nan, nan, nan, nan, nan, nan, math.nan, math.nan, math.nan)
 
-    def gap(self, other: Observables) -> Observables:
-        """Absolute differences, entry by entry."""
-        return Observables(*(abs(getattr(self, f.name) - getattr(other, f.name)) for f in fields(self)))
+    def scales(self) -> dict[str, Array | float]:
+        """The size against which a difference in each number is judged."""
+        return {
+            "shell_integral": np.abs(self.shell_integral),
+            "contact": np.maximum(np.abs(self.contact), 0.1),
+            "inner_edge": np.maximum(np.abs(self.inner_edge), 0.1),
+            "outer_edge": np.maximum(np.abs(self.outer_edge), 0.1),
+            "c_zero": np.full_like(self.c_zero, np.abs(self.c_zero).max()),
+            "h_zero": np.full_like(self.h_zero, np.abs(self.h_zero).max()),
+            "energy": abs(self.energy),
+            "virial": 1.0 + abs(self.virial),
+            "inverse_compressibility": 1.0 + abs(self.inverse_compressibility),
+        }
 
-    def bars(self, gap: Observables, share: float, relative: float) -> Observables:
-        """Error bars: a share of the gap to a second grid plus a relative floor."""
-        return Observables(
-            *(share * getattr(gap, f.name) + relative * abs(getattr(self, f.name)) for f in fields(self))
-        )
+    def roughness(self, rough: Observables) -> float:
+        """How far a second grid is off, in units of a typical error of a coordination number.
+
+        Every number is judged against its usual sensitivity (`SENSITIVITY`) and the worst one counts,
+        so that a difference that happens to vanish in one number does not shrink its error bar.
+        """
+        scales = self.scales()
+        worst = 0.0
+        for name, usual in SENSITIVITY.items():
+            difference = np.abs(np.asarray(getattr(self, name)) - np.asarray(getattr(rough, name)))
+            scale = np.asarray(scales[name])
+            relative = np.divide(difference, scale, out=np.zeros_like(difference), where=scale > 0.0)
+            worst = max(worst, float(relative.max()) / usual)
+        return worst
+
+    def bars(self, roughness: float, floor: float) -> Observables:
+        """Absolute error bars from a bound on the relative error of a coordination number.
+
+        Parameters
+        ----------
+        roughness : float
+            That bound from the grid; multiplied by each number's usual sensitivity.
+        floor : float
+            What the residual and the extent add to every number.
+        """
+        scales = self.scales()
+        out: dict[str, Array | float] = {}
+        for name, scale in scales.items():
+            bar = scale * (SENSITIVITY.get(name, SENSITIVITY["c_zero"]) * roughness + floor)
+            out[name] = bar if isinstance(bar, np.ndarray) else float(bar)
+        return Observables(**out)  # type: ignore[arg-type]
+
+
+SENSITIVITY = {
+    "shell_integral": 1.0,
+    "contact": 12.0,
+    "inner_edge": 14.0,
+    "outer_edge": 14.0,
+    "c_zero": 5.0,
+    "energy": 0.3,
+    "virial": 4.0,
+    "inverse_compressibility": 2.0,
+}
+"""Relative grid error of each number in units of a coordination number's: medians over 400 random
+liquids (two to three species, size ratio up to 2, all closures), then raised, for contact values and
+the virial, until their bars covered 95 % of those states. The tests draw other states."""
 
 
 def observe(equations: Equations, x: Array) -> Observables:

@@ -1,0 +1,51 @@
+"""The shared look of all figures: sizes, fonts, colours that survive grey printing."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+import matplotlib
+from matplotlib.figure import Figure
+
+INK = "#22303c"
+FOUND = "#0b6e74"
+COUNT = "#b3541e"
+SECOND = "#6a4c93"
+SHELL = "#dfe9e6"
+GRID = "#c9d2d6"
+SERIES = ("#0b6e74", "#b3541e", "#6a4c93", "#8a7a1f")
+DASHES = ("-", "--", "-.", ":")
+
+RC = {
+    "font.size": 9.0,
+    "axes.titlesize": 9.5,
+    "axes.labelsize": 9.0,
+    "axes.edgecolor": INK,
+    "axes.labelcolor": INK,
+    "text.color": INK,
+    "xtick.color": INK,
+    "ytick.color": INK,
+    "axes.spines.top": False,
+    "legend.frameon": False,
+    "legend.fontsize": 8.0,
+    "svg.hashsalt": "localcomp",
+    "savefig.dpi": 150,
+}
+
+FORMATS = (".png", ".svg", ".pdf")
+
+
+@contextmanager
+def look() -> Iterator[None]:
+    """Draw with the shared style, without touching the user's own settings."""
+    with matplotlib.rc_context(RC):
+        yield
+
+
+def save(figure: Figure, path: Path) -> None:
+    """Write a figure; the format follows the file name. No dates inside, so equal input gives equal bytes."""
+    metadata = {".svg": {"Date": None}, ".pdf": {"CreationDate": None}}.get(path.suffix.lower())
+    with look():
+        figure.savefig(path, metadata=metadata)

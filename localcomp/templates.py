@@ -1,0 +1,55 @@
+"""The files `localcomp new` writes: commented, and they run as they are."""
+
+from __future__ import annotations
+
+STATE_TOML = """\
+# A mixture of spheres with square wells, in one state. Run it with:  localcomp state state.toml
+# Reduced units: lengths in one diameter, energies in one well depth of your choice.
+
+[mixture]
+names = ["small", "large"]
+diameter = [1.0, 1.5]          # sigma of each species
+well_depth = [1.0, 1.5]        # eps of each species; 0 is a hard sphere, negative a shoulder
+well_range = 1.5               # the well ends at 1.5 sigma; a number, or one per species
+k = 0.1                        # eps_12 = (1 - k) sqrt(eps_1 eps_2); a number or a full matrix
+# l = 0.0                      # sigma_12 = (1 - l) (sigma_1 + sigma_2)/2
+
+# A pair may be given outright, whatever the rules above say:
+# [[mixture.pairs]]
+# between = ["small", "large"]
+# diameter = 1.25
+# well_depth = 1.1
+# well_range = 1.5
+
+[state]
+temperature = 2.0              # kT in the energy unit
+packing_fraction = 0.40        # eta = (pi/6) sum rho_i sigma_i^3; a liquid has 0.35 to 0.45
+mole_fractions = [0.5, 0.5]    # they sum to 1; 0 is infinite dilution
+closure = "rhnc"               # rhnc (best against simulation), hnc, py, msa
+
+[shell]
+rule = "well_edge"             # well_edge, first_minimum, or multiple (then also: multiple = 1.5)
+
+[numerics]
+accuracy = 1e-5                # relative, on neighbour counts; the program picks its grid
+
+# For kelvin, angstrom and J/mol, uncomment this, give eps/k in kelvin, sigma in angstrom, the
+# temperature in kelvin, and if you like molar_volume (cm3/mol) in place of packing_fraction:
+# [units]
+# length = "angstrom"
+# energy = "kelvin"
+"""
+
+LIQUID_TOML = """\
+# A measured pure liquid, to be turned into a sphere with a square well:  localcomp calibrate liquid.toml
+
+[fluid]
+name = "argon"
+temperature = 87.3             # K
+molar_volume = 28.628          # cm3/mol
+residual_energy = -5786.0      # U - U(ideal gas), J/mol; or instead:  heat_of_vaporization = 6437.0
+pressure = 101.302             # kPa
+well_range = 1.5               # chosen; the other two parameters follow from it
+closure = "rhnc"
+source = "saturated liquid, reference equation of state of Tegeler, Span and Wagner (1999)"
+"""
