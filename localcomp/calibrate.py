@@ -12,7 +12,6 @@ from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
-from ozsolve import CLOSURES, Mixture, State, solve
 from scipy.optimize import brentq
 
 from localcomp.energyroute import energy_route
@@ -20,6 +19,7 @@ from localcomp.errors import BadInput, NoAnswer, Problem
 from localcomp.inputs import positive
 from localcomp.tables import Table, load_toml
 from localcomp.units import GAS_CONSTANT, density_from_molar_volume
+from ozsolve import CLOSURES, Mixture, State, solve
 
 KEYS = (
     "name", "temperature", "molar_volume", "residual_energy", "heat_of_vaporization", "pressure",

@@ -39,6 +39,8 @@ def pair_curves(report: StateReport) -> list[PairCurve]:
                     reverse_count=None if i == j else rho[i] * counts,
                     core=float(mixture.pairs.diameter[i, j]),
                     shell=float(report.neighbors.radius[i, j]),
+                    count_in_shell=float(report.neighbors.coordination_numbers[i, j]),
+                    reverse_in_shell=float(report.neighbors.coordination_numbers[j, i]),
                 )
             )
     return curves

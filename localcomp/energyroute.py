@@ -12,10 +12,10 @@ import math
 from dataclasses import dataclass, replace
 
 import numpy as np
-from ozsolve import Mixture, Solution, State, solve
 
 from localcomp.errors import NoAnswer
 from localcomp.hardspheres import bmcsl_compressibility_factor
+from ozsolve import Mixture, Solution, State, solve
 
 GAUSS_POINTS = 6
 """Points in beta; the integrand is smooth and 8 points change Z by less than 1e-6 in trials."""
@@ -56,7 +56,9 @@ def energy_route(
         path in beta meets a region without solution.
     """
     if not is_additive(mixture):
-        raise NoAnswer("the energy route needs additive diameters (l = 0): its hard-sphere part has no closed form else")
+        raise NoAnswer(
+            "the energy route needs additive diameters (l = 0): its hard-sphere part has no closed form else"
+        )
     rho = mixture.densities(state)
     nodes, weights = np.polynomial.legendre.leggauss(points)
     helmholtz = slope = 0.0

@@ -8,13 +8,13 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-from ozsolve import CLOSURES, InputError, Mixture, PairOverride, State
-from ozsolve import DEFAULT_ACCURACY as DEFAULT_ACCURACY
 
 from localcomp.errors import BadInput, Problem
 from localcomp.shells import RULES, FixedMultiple, ShellRule, make_rule
 from localcomp.tables import Table, as_number, load_toml
 from localcomp.units import ENERGY_UNITS, LENGTH_UNITS, Units, density_from_molar_volume
+from ozsolve import CLOSURES, InputError, Mixture, PairOverride, State
+from ozsolve import DEFAULT_ACCURACY as DEFAULT_ACCURACY
 
 MAX_SPECIES = 8
 MAX_PACKING = 0.55

@@ -10,10 +10,10 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from ozsolve import Solution
 
 from localcomp.errors import NoAnswer
 from localcomp.shells import FirstMinimum, FixedMultiple, ShellRule, WellEdge
+from ozsolve import Solution
 
 Array = NDArray[np.float64]
 

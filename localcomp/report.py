@@ -14,7 +14,6 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from ozsolve import CLOSURES, Solution, solve
 
 from localcomp.energyroute import EnergyRoute, energy_route
 from localcomp.errors import NoAnswer
@@ -24,6 +23,7 @@ from localcomp.models.base import compare
 from localcomp.neighbors import Neighbors, ShellSensitivity, count_neighbors, shell_sensitivity
 from localcomp.shells import FixedMultiple
 from localcomp.units import AVOGADRO_A3_PER_CM3, GAS_CONSTANT
+from ozsolve import CLOSURES, Solution, solve
 
 Array = NDArray[np.float64]
 
@@ -85,9 +85,7 @@ def report_state(request: StateFile) -> StateReport:
     except NoAnswer as reason:
         return StateReport(request, solution, shell_reason=str(reason))
     multiple = request.rule.multiple if isinstance(request.rule, FixedMultiple) else 1.5
-    statements = compare(
-        neighbors.neighbor_ratios, StatementInput.of(request.mixture, request.state), MODELS
-    )
+    statements = compare(neighbors.neighbor_ratios, StatementInput.of(request.mixture, request.state), MODELS)
     route: EnergyRoute | None = None
     reason_text = ""
     try:

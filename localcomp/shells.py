@@ -7,10 +7,10 @@ from typing import ClassVar, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
-from ozsolve import Solution
 from scipy.interpolate import CubicSpline
 
 from localcomp.errors import NoAnswer
+from ozsolve import Solution
 
 Array = NDArray[np.float64]
 

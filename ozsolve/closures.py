@@ -72,8 +72,7 @@ class Closure(ABC):
         zero = np.zeros_like(attraction)
         return BoundClosure(
             lambda gamma: well * self.g(gamma, attraction, bridge) + outside * self.g(gamma, zero, bridge),
-            lambda gamma: well * self.g_slope(gamma, attraction, bridge)
-            + outside * self.g_slope(gamma, zero, bridge),
+            lambda gamma: well * self.g_slope(gamma, attraction, bridge) + outside * self.g_slope(gamma, zero, bridge),
         )
 
     def __repr__(self) -> str:

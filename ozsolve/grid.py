@@ -59,8 +59,7 @@ def _bernoulli() -> tuple[Array, ...]:
     for m in range(1, STENCIL + 1):
         numbers.append(-sum(math.comb(m + 1, k) * numbers[k] for k in range(m)) / (m + 1))
     return tuple(
-        np.array([math.comb(q, power) * numbers[q - power] for power in range(q + 1)])
-        for q in range(1, STENCIL + 1)
+        np.array([math.comb(q, power) * numbers[q - power] for power in range(q + 1)]) for q in range(1, STENCIL + 1)
     )
 
 

@@ -69,4 +69,3 @@ def iterate(equations: Equations, x: Array, rule: StoppingRule, stepper: Anderso
                 return Outcome(x, Status.DIVERGED, residuals, definite, history.restarts)
             x = stepper.step(image, residual, history)
     return Outcome(x, Status.MAX_STEPS, residuals, definite, history.restarts)
-

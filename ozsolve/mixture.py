@@ -59,7 +59,7 @@ class Mixture:
         well_depth: ArrayLike,
         well_range: ArrayLike = 1.5,
         k: ArrayLike = 0.0,
-        l: ArrayLike = 0.0,  # noqa: E741 - l_ij is the name the field gives it
+        l: ArrayLike = 0.0,
         names: Sequence[str] | None = None,
         overrides: Sequence[PairOverride] = (),
     ) -> None:
@@ -169,9 +169,7 @@ class State:
         if self.density is not None:
             _positive("density", self.density)
         elif not _is_number(self.packing_fraction) or not 0.0 < float(self.packing_fraction) < MAX_PACKING_FRACTION:  # type: ignore[arg-type]
-            raise InputError(
-                "packing_fraction", self.packing_fraction, f"must lie inside (0, {MAX_PACKING_FRACTION})"
-            )
+            raise InputError("packing_fraction", self.packing_fraction, f"must lie inside (0, {MAX_PACKING_FRACTION})")
 
 
 def _is_number(value: object) -> bool:

@@ -173,4 +173,4 @@ def lowest_eigenvalue(c_k: Array, root_rho: Array) -> Array:
     species = root_rho.shape[-1]
     full = np.moveaxis(unpack(c_k, species), -1, 1)
     scale = root_rho[:, None, :, None] * root_rho[:, None, None, :]
-    return np.linalg.eigvalsh(np.eye(species) - scale * full)[..., 0].min(axis=-1)
+    return np.asarray(np.linalg.eigvalsh(np.eye(species) - scale * full)[..., 0].min(axis=-1))

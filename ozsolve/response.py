@@ -36,9 +36,7 @@ class Response:
         t -> the reduced fluid displaced by t along the direction; `fluid_at(0)` is the solved one.
     """
 
-    def __init__(
-        self, equations: Equations, x: Array, reference: Array, fluid_at: Callable[[float], Fluid]
-    ) -> None:
+    def __init__(self, equations: Equations, x: Array, reference: Array, fluid_at: Callable[[float], Fluid]) -> None:
         grid, closure = equations.grid, equations.closure
         forward, backward = fluid_at(STEP), fluid_at(-STEP)
         bridges: tuple[Array | None, Array | None] = (None, None)

@@ -173,9 +173,7 @@ def _on_first_branch(equations: Equations, x: Array) -> bool:
     return lowest > NEAR_INSTABILITY or largest_real_eigenvalue(equations, x) < 1.0
 
 
-def _sure(
-    equations: Equations, reference: Array, rule: StoppingRule, stepper: Anderson, counters: Counters
-) -> Root:
+def _sure(equations: Equations, reference: Array, rule: StoppingRule, stepper: Anderson, counters: Counters) -> Root:
     fluid, grid, closure, bridge = equations.fluid, equations.grid, equations.closure, equations.bridge
 
     def at(t: float) -> Equations:

@@ -10,7 +10,6 @@ import numpy as np
 from ozsolve.closures import Closure
 from ozsolve.continuation import Rung
 from ozsolve.equations import Equations, Fluid
-from ozsolve.grid import Grid
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import lowest_eigenvalue, unpack
 from ozsolve.potential import Array
@@ -153,7 +152,7 @@ class Solution:
 
     @cached_property
     def _reduced_c_k(self) -> Array:
-        return self.fine.equations.direct_k(self.fine.x)[0]
+        return np.asarray(self.fine.equations.direct_k(self.fine.x)[0])
 
     @cached_property
     def structure_factors(self) -> Array:
@@ -254,8 +253,7 @@ class Solution:
         """The same at many radii common to all pairs, shape (s, s, len(radii)), without error bars."""
         pairs = self.fine.equations.shape[1]
         rows = [
-            shell_integrals(self.fine.equations, self.fine.x, np.full(pairs, radius / self.length))
-            for radius in radii
+            shell_integrals(self.fine.equations, self.fine.x, np.full(pairs, radius / self.length)) for radius in radii
         ]
         return self._table(np.array(rows).T * self.length**3)
 
@@ -313,6 +311,3 @@ def reduced_fluid(mixture: Mixture, state: State) -> tuple[Fluid, float]:
         attraction=(mixture.pairs.well_depth[i, j] / state.temperature)[None],
     )
     return fluid, length
-
-
-__all__ = ["Grid", "LevelResult", "Solution", "Stats", "reduced_fluid"]

@@ -14,14 +14,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from ozsolve.anderson import Anderson
-from ozsolve.closures import PY, RHNC, Closure, get_closure
-from ozsolve.equations import Equations, Fluid, regrid
+from ozsolve.closures import RHNC, Closure, get_closure
+from ozsolve.equations import Fluid, regrid
 from ozsolve.errors import InputError, NotConverged
 from ozsolve.grid import Grid, good_size
 from ozsolve.mixture import Mixture, State
-from ozsolve.oz import unpack
-from ozsolve.potential import Array
-from ozsolve.root import Counters, Root, bridge_function, find_root
+from ozsolve.root import Counters, Root, find_root
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.stopping import Status, StoppingRule
 from ozsolve.thermodynamics import Observables, observe
@@ -107,9 +105,7 @@ def _checked_accuracy(accuracy: float) -> float:
     except (TypeError, ValueError):
         value = float("nan")
     if not FINEST_ACCURACY <= value <= COARSEST_ACCURACY:
-        raise InputError(
-            "accuracy", accuracy, f"a number between {FINEST_ACCURACY:g} and {COARSEST_ACCURACY:g}"
-        )
+        raise InputError("accuracy", accuracy, f"a number between {FINEST_ACCURACY:g} and {COARSEST_ACCURACY:g}")
     return value
 
 
@@ -139,7 +135,6 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     tolerance = max(RESIDUAL_SHARE * accuracy, SMALLEST_TOLERANCE)
     rule = StoppingRule(tolerance)
     counters = Counters()
-    pairs = fluid.core.shape[1]
     species = fluid.rho.shape[1]
     grid = first_grid(fluid, accuracy)
     coarse = find_root(fluid, grid, closure, rule, stepper, counters)
@@ -242,6 +237,3 @@ def _assemble(
         residuals=tuple(fine.residuals),
         stats=stats,
     )
-
-
-__all__ = ["DEFAULT_ACCURACY", "Equations", "PY", "bridge_function", "first_grid", "solve", "unpack", "Array"]

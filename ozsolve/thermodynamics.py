@@ -218,7 +218,8 @@ def structure_factors(c_k: Array, rho: Array) -> Array:
     full = np.moveaxis(unpack(c_k, species), -1, 0)
     root = np.sqrt(rho)
     matrix = np.eye(species) - root[:, None] * root[None, :] * full
-    return np.moveaxis(np.linalg.inv(matrix), 0, -1)
+    inverse: Array = np.linalg.inv(matrix).astype(np.float64, copy=False)
+    return np.moveaxis(inverse, 0, -1)
 
 
 def concentration_fluctuations(h_zero: Array, rho: Array) -> Array:

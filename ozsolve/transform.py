@@ -42,14 +42,14 @@ class RadialTransform:
             self.input[:] = rf_r
         self._plan.execute()
         self.count += 1
-        return self._out * self._to_k
+        return np.asarray(self._out * self._to_k)
 
     def inverse(self, f_k: Array) -> Array:
         """r f(r), shape (rows, points - 1), from F(k), filtered near the largest wave number."""
         np.multiply(f_k, self._k_filtered, out=self.input)
         self._plan.execute()
         self.count += 1
-        return self._out.copy()
+        return np.array(self._out)
 
 
 @lru_cache(maxsize=32)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from rich.console import Console
 from rich.table import Table
 from rich.text import Text
@@ -17,14 +19,14 @@ def console() -> Console:
     return plain if plain.is_terminal else Console(highlight=False, width=WIDTH)
 
 
-def plus_minus(value: float, bar: float) -> str:
-    """A number with its error bar, digits cut where the bar begins."""
-    if bar <= 0.0:
+def with_error(value: float, bar: float) -> str:
+    """A number with its error bar in its last digit: 2.97839(2) is 2.97839 +- 0.00002."""
+    if not bar > 0.0:
         return f"{value:.6g}"
     digits = 0
     while digits < 9 and bar * 10**digits < 0.95:
         digits += 1
-    return f"{value:.{digits}f} ± {bar:.1g}"
+    return f"{value:.{digits}f}({math.ceil(bar * 10**digits - 0.05)})"
 
 
 def table(title: str, *columns: str) -> Table:
@@ -56,7 +58,8 @@ def print_state(report: StateReport) -> None:
         out.print(
             f"\n{solution.status.value}; {stats.steps} steps, {stats.grid_points} grid points of "
             f"{stats.spacing * solution.length:.3g} {units.length_label}, {1e3 * stats.seconds:.0f} ms; "
-            f"± is the numerical error at the accuracy asked ({request.accuracy:g}), not the closure's own error."
+            f"2.978(2) is 2.978 ± 0.002, the numerical error at the accuracy asked ({request.accuracy:g}), not the "
+            "closure's own error."
         )
     for warning in report.warnings:
         out.print(f"warning: {warning}", style="yellow")
@@ -79,10 +82,10 @@ def _neighbors(out: Console, report: StateReport) -> None:
             made.add_row(
                 f"{center} <- {neighbor}",
                 f"{found.radius[i, j]:.5g}",
-                plus_minus(found.coordination_numbers[i, j], found.coordination_errors[i, j]),
-                plus_minus(found.local_mole_fractions[i, j], found.fraction_errors[i, j]),
-                "1" if i == j else plus_minus(found.neighbor_ratios[i, j], found.ratio_errors[i, j]),
-                plus_minus(report.solution.contact_values[i, j], errors.contact[i, j]),
+                with_error(found.coordination_numbers[i, j], found.coordination_errors[i, j]),
+                with_error(found.local_mole_fractions[i, j], found.fraction_errors[i, j]),
+                "1" if i == j else with_error(found.neighbor_ratios[i, j], found.ratio_errors[i, j]),
+                with_error(report.solution.contact_values[i, j], errors.contact[i, j]),
             )
     out.print(made)
     if len(names) > 1:
@@ -133,8 +136,8 @@ def _thermodynamics(out: Console, report: StateReport) -> None:
     made = table("\nThermodynamics", "quantity", "value", "route or unit")
     energy = units.energy_out(solution.internal_energy)
     bar = units.energy_out(errors.energy * report.request.state.temperature)
-    made.add_row("residual energy U/N", plus_minus(energy, bar), units.energy_label)
-    made.add_row("Z = P/(rho kT)", plus_minus(solution.virial_z, errors.virial), "virial")
+    made.add_row("residual energy U/N", with_error(energy, bar), units.energy_label)
+    made.add_row("Z = P/(rho kT)", with_error(solution.virial_z, errors.virial), "virial")
     if report.route is not None:
         made.add_row("Z = P/(rho kT)", f"{report.route.z:.4f}", "energy")
         made.add_row("  gap between these routes", f"{solution.virial_z - report.route.z:+.4f}", "virial - energy")
@@ -142,7 +145,7 @@ def _thermodynamics(out: Console, report: StateReport) -> None:
         pressure = pressure_mpa(report, z) if z is not None else None
         if pressure is not None:
             made.add_row("pressure", f"{pressure:.4g}", f"MPa, {label}")
-    inverse = plus_minus(solution.inverse_compressibility, errors.inverse_compressibility)
+    inverse = with_error(solution.inverse_compressibility, errors.inverse_compressibility)
     made.add_row("1/(rho kT kappa_T)", inverse, "compressibility")
     made.add_row("1/(rho kT kappa_T)", f"{solution.virial_inverse_compressibility:.4f}", "virial")
     made.add_row("  gap between these routes", f"{solution.route_gap:+.4f}", "virial - compressibility")

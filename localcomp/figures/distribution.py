@@ -29,6 +29,8 @@ class PairCurve:
         (None for like pairs).
     core, shell : float
         sigma_ij and the shell radius.
+    count_in_shell, reverse_in_shell : float
+        N_ij and N_ji.
     """
 
     center: str
@@ -40,6 +42,8 @@ class PairCurve:
     reverse_count: Array | None
     core: float
     shell: float
+    count_in_shell: float
+    reverse_in_shell: float
 
 
 def distribution_figure(curves: Sequence[PairCurve], title: str, length_label: str) -> Figure:
@@ -60,32 +64,35 @@ def distribution_figure(curves: Sequence[PairCurve], title: str, length_label: s
 def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
     axis.axvspan(curve.core, curve.shell, color=SHELL, zorder=0)
     axis.axhline(1.0, color=GRID, lw=0.8, zorder=1)
-    axis.plot(curve.r, curve.g, color=FOUND, lw=1.6, zorder=3, label="g(r)")
-    top = float(curve.g.max())
-    axis.set_ylim(0.0, 1.28 * top)
+    (line,) = axis.plot(curve.r, curve.g, color=FOUND, lw=1.6, zorder=3, label="g(r), left scale")
+    axis.set_ylim(0.0, 1.1 * float(curve.g.max()))
     axis.set_xlim(0.0, float(curve.r[-1]))
     axis.set_xlabel(f"r / {length_label}")
     axis.set_ylabel("g(r)", color=FOUND)
-    axis.set_title(f"{curve.center} - {curve.neighbor}")
     right = axis.twinx()
     right.spines["right"].set_visible(True)
-    counts = [(f"{curve.neighbor} around {curve.center}", curve.count, COUNT, "--")]
+    counts = [(f"{curve.neighbor} within r of {curve.center}", curve.count, curve.count_in_shell, COUNT, "--")]
     if curve.reverse_count is not None:
-        counts.append((f"{curve.center} around {curve.neighbor}", curve.reverse_count, SECOND, ":"))
-    shell_values = []
-    for label, values, color, dash in counts:
-        right.plot(curve.radii, values, color=color, lw=1.3, ls=dash, label=label)
-        at_shell = float(np.interp(curve.shell, curve.radii, values))
-        shell_values.append(at_shell)
-        right.plot([curve.shell], [at_shell], "o", ms=4, color=color)
-        right.annotate(
-            f"{at_shell:.2f}", (curve.shell, at_shell), xytext=(5, -9), textcoords="offset points", color=color,
-            fontsize=8,
-        )  # fmt: skip
-    right.set_ylim(0.0, 2.6 * max(shell_values) + 1e-12)
+        label = f"{curve.center} within r of {curve.neighbor}"
+        counts.append((label, curve.reverse_count, curve.reverse_in_shell, SECOND, ":"))
+    handles = [line]
+    for n, (label, values, in_shell, color, dash) in enumerate(counts):
+        (count_line,) = right.plot(curve.radii, values, color=color, lw=1.4, ls=dash, label=label)
+        handles.append(count_line)
+        right.plot([curve.shell], [in_shell], "o", ms=4, color=color)
+        offset = (6, -10) if in_shell <= counts[n - 1][2] else (6, 6)
+        if n == 0 or abs(in_shell - counts[0][2]) > 0.005:
+            right.annotate(
+                f"{in_shell:.2f}", (curve.shell, in_shell), xytext=offset, textcoords="offset points", color=color,
+                fontsize=8,
+            )  # fmt: skip
+    right.set_ylim(0.0, 2.6 * max(item[2] for item in counts) + 1e-12)
     right.set_ylabel("neighbours within r")
-    handles = [*axis.get_lines()[1:2], *right.get_lines()[::2]]
-    axis.legend(handles, [str(h.get_label()) for h in handles], loc="upper right", handlelength=2.4)
+    axis.set_title(f"{curve.center} - {curve.neighbor}", pad=8 + 12 * len(handles))
+    axis.legend(
+        handles, [str(h.get_label()) for h in handles], loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1,
+        handlelength=2.6, borderaxespad=0.2, labelspacing=0.25,
+    )  # fmt: skip
     axis.text(
         0.5 * (curve.core + curve.shell), 0.03, "shell", transform=axis.get_xaxis_transform(), ha="center",
         fontsize=7.5, color=INK,

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
+from typing import Any, cast
 
 import matplotlib
 from matplotlib.figure import Figure
@@ -18,7 +19,7 @@ GRID = "#c9d2d6"
 SERIES = ("#0b6e74", "#b3541e", "#6a4c93", "#8a7a1f")
 DASHES = ("-", "--", "-.", ":")
 
-RC = {
+RC: dict[str, Any] = {
     "font.size": 9.0,
     "axes.titlesize": 9.5,
     "axes.labelsize": 9.0,
@@ -40,7 +41,7 @@ FORMATS = (".png", ".svg", ".pdf")
 @contextmanager
 def look() -> Iterator[None]:
     """Draw with the shared style, without touching the user's own settings."""
-    with matplotlib.rc_context(RC):
+    with matplotlib.rc_context(cast(Any, RC)):
         yield
 
 

@@ -8,6 +8,7 @@ from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
+
 from ozsolve import Mixture, State
 
 Array = NDArray[np.float64]
@@ -56,9 +57,7 @@ class StatementInput:
     @classmethod
     def of(cls, mixture: Mixture, state: State) -> StatementInput:
         """Read off a mixture and its state."""
-        return cls(
-            mixture.pairs.well_depth / state.temperature, mixture.diameter, np.asarray(state.mole_fractions)
-        )
+        return cls(mixture.pairs.well_depth / state.temperature, mixture.diameter, np.asarray(state.mole_fractions))
 
     @property
     def exchange(self) -> Array:
