@@ -130,9 +130,8 @@ def read_liquid(path: str | Path) -> PureLiquid:
     reach = table.number("well_range", "a number in (1, 2.5]", lambda v: 1.0 < v <= 2.5, default=1.5)
     closure = table.word("closure", CLOSURES, "rhnc")
     energy = _energy(table, temperature, volume, pressure)
-    if problems or None in (temperature, volume, pressure, reach, energy):
+    if problems or temperature is None or volume is None or pressure is None or reach is None or energy is None:
         raise BadInput(problems)
-    assert temperature and volume and pressure is not None and reach and energy is not None
     return PureLiquid(name, temperature, volume, energy, pressure, reach, closure, source)
 
 

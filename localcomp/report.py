@@ -155,7 +155,8 @@ def as_json(report: StateReport) -> dict[str, Any]:
 
 def _numbers(report: StateReport) -> dict[str, Any]:
     solution, found, units = report.solution, report.neighbors, report.request.units
-    assert found is not None and report.sensitivity is not None
+    assert found is not None
+    assert report.sensitivity is not None
     errors = solution.errors
     temperature = report.request.state.temperature
     inside, outside = solution.edge_values

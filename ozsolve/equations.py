@@ -81,7 +81,7 @@ class Equations:
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""
-        return x.reshape(self.shape) * self._inverse_r
+        return np.asarray(x.reshape(self.shape) * self._inverse_r)
 
     def pair_table(self, pairs: Array) -> Array:
         """A symmetric (s, s) table from values per pair i <= j."""

@@ -120,8 +120,8 @@ def _shells(out: Console, report: StateReport) -> None:
     sensitivity = report.sensitivity
     if len(names) < 2 or sensitivity is None or len(sensitivity.results) < 2:
         return
-    made = table("\nDoes the ratio hinge on the shell rule?", "R_ij", *[r.rule.description for r in sensitivity.results],
-                 "spread")  # fmt: skip
+    rules = [result.rule.description for result in sensitivity.results]
+    made = table("\nDoes the ratio hinge on the shell rule?", "R_ij", *rules, "spread")
     for i, center in enumerate(names):
         for j, neighbor in enumerate(names):
             if i != j:
