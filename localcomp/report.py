@@ -68,6 +68,11 @@ class StateReport:
             notes.append(self.solution.message)
         if self.sensitivity is not None:
             notes.extend(self.sensitivity.missing)
+        if self.route is not None and self.route.z < 0.0:
+            notes.append(
+                "the energy route gives a negative pressure: at this density the liquid is under tension "
+                "(a smaller volume would relax it)"
+            )
         if self.route_reason:
             notes.append(f"energy route: {self.route_reason}")
         return tuple(notes)

@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.linalg.lapack import dposv
 
 from ozsolve.potential import Array
 
@@ -78,13 +79,24 @@ class Anderson:
             history.gram[:, slot, :used] = row
             history.gram[:, :used, slot] = row
             target = np.matmul(d_residual, residual[:, :, None])
-            try:
-                theta = np.linalg.solve(history.gram[:, :used, :used], target)
-            except np.linalg.LinAlgError:  # a repeated step: nothing to learn from, begin again
+            theta = _solve_small(history.gram[:, :used, :used], target)
+            if theta is None:  # a repeated step: nothing to learn from, begin again
                 history.filled = 0
                 history.restarts += 1
-                theta = np.zeros((len(image), used, 1))
-            following = image - np.matmul(theta.transpose(0, 2, 1), history.d_image[:, :used])[:, 0]
-        history.residual[:] = residual
-        history.image[:] = image
+                following = image.copy()
+            else:
+                following = image - np.matmul(theta.transpose(0, 2, 1), history.d_image[:, :used])[:, 0]
+        history.residual = residual
+        history.image = image
         return following
+
+
+def _solve_small(gram: Array, target: Array) -> Array | None:
+    """gram^-1 target for a stack of small positive definite matrices; None when one is singular."""
+    if len(gram) == 1:  # one state: the LAPACK routine itself, a quarter of the time of a stacked solve
+        _, theta, info = dposv(gram[0], target[0])
+        return theta[None] if info == 0 else None
+    try:
+        return np.asarray(np.linalg.solve(gram, target), dtype=np.float64)
+    except np.linalg.LinAlgError:
+        return None

@@ -81,7 +81,7 @@ class Equations:
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""
-        return np.asarray(x.reshape(self.shape) * self._inverse_r)
+        return np.multiply(x.reshape(self.shape), self._inverse_r)
 
     def pair_table(self, pairs: Array) -> Array:
         """A symmetric (s, s) table from values per pair i <= j."""
@@ -100,10 +100,10 @@ class Equations:
         np.subtract(rc_r, self.grid.r, out=self._input)
         return self.transform.forward().reshape(self.shape)
 
-    def apply(self, x: Array) -> tuple[Array, Array]:
-        """G(x), same shape as x, and the smallest pivot of I - C(k), shape (b,)."""
-        gamma_k, smallest = indirect(self.direct_k(x), self.root_rho)
-        return self._inverse(gamma_k).reshape(x.shape), smallest
+    def apply(self, x: Array) -> tuple[Array, list[Array]]:
+        """G(x), same shape as x, and the pivots of I - C(k) (see `oz.smallest_pivot`)."""
+        gamma_k, pivots = indirect(self.direct_k(x), self.root_rho)
+        return self._inverse(gamma_k).reshape(x.shape), pivots
 
     def derivative(self, x: Array) -> Callable[[Array], Array]:
         """The linear map v -> G'(x) v."""

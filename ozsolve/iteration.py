@@ -8,6 +8,7 @@ import numpy as np
 
 from ozsolve.anderson import Anderson
 from ozsolve.equations import Equations
+from ozsolve.oz import smallest_pivot
 from ozsolve.potential import Array
 from ozsolve.stopping import Status, StoppingRule
 
@@ -52,20 +53,24 @@ def iterate(equations: Equations, x: Array, rule: StoppingRule, stepper: Anderso
     history = stepper.start(x)
     residuals: list[float] = []
     best = np.inf
-    definite = False
+    status = Status.MAX_STEPS
+    pivots: list[Array] = []
     with np.errstate(all="ignore"):
         for _ in range(rule.max_steps + 1):
-            image, smallest = equations.apply(x)
+            image, pivots = equations.apply(x)
             residual = image - x
-            norm = float(np.abs(residual).max())
+            norm = max(float(residual.max()), -float(residual.min()))
             residuals.append(norm)
-            definite = bool(smallest[0] > 0.0)
-            if not np.isfinite(norm):
-                return Outcome(x, Status.NONFINITE, residuals, False, history.restarts)
+            if not norm < np.inf:
+                status = Status.NONFINITE
+                break
             if norm < rule.tolerance:
-                return Outcome(image, Status.SOLVED, residuals, definite, history.restarts)
+                status, x = Status.SOLVED, image
+                break
             best = min(best, norm)
             if norm > rule.growth * best:
-                return Outcome(x, Status.DIVERGED, residuals, definite, history.restarts)
+                status = Status.DIVERGED
+                break
             x = stepper.step(image, residual, history)
-    return Outcome(x, Status.MAX_STEPS, residuals, definite, history.restarts)
+        definite = status is not Status.NONFINITE and bool(smallest_pivot(pivots)[0] > 0.0)
+    return Outcome(x, status, residuals, definite, history.restarts)

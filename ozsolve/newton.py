@@ -12,6 +12,7 @@ from scipy.sparse.linalg import ArpackNoConvergence, LinearOperator, eigs, gmres
 
 from ozsolve.equations import Equations
 from ozsolve.iteration import Outcome
+from ozsolve.oz import smallest_pivot
 from ozsolve.potential import Array
 from ozsolve.stopping import Status, StoppingRule
 
@@ -25,7 +26,7 @@ def newton(equations: Equations, x: Array, rule: StoppingRule) -> Outcome:
     """Iterate one state, x of shape (1, size), to its end."""
     residuals: list[float] = []
     with np.errstate(all="ignore"):
-        image, smallest = equations.apply(x)
+        image, pivots = equations.apply(x)
         residual = image - x
         for _ in range(MAX_NEWTON):
             norm = float(np.abs(residual).max())
@@ -33,22 +34,22 @@ def newton(equations: Equations, x: Array, rule: StoppingRule) -> Outcome:
             if not np.isfinite(norm):
                 return Outcome(x, Status.NONFINITE, residuals, False)
             if norm < rule.tolerance:
-                return Outcome(image, Status.SOLVED, residuals, bool(smallest[0] > 0.0))
+                return Outcome(image, Status.SOLVED, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
             direction = solve_linear(equations, x, residual, FORCING)
             length = float(np.linalg.norm(residual))
             size = 1.0
             while True:
                 trial = x + size * direction
-                image, smallest = equations.apply(trial)
+                image, pivots = equations.apply(trial)
                 residual = image - trial
                 shrunk = float(np.linalg.norm(residual)) < (1.0 - 1e-4 * size) * length
-                if smallest[0] > 0.0 and shrunk:
+                if smallest_pivot(pivots)[0] > 0.0 and shrunk:
                     break
                 size *= 0.5
                 if size < SHORTEST_STEP:
-                    return Outcome(x, Status.DIVERGED, residuals, bool(smallest[0] > 0.0))
+                    return Outcome(x, Status.DIVERGED, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
             x = trial
-    return Outcome(x, Status.MAX_STEPS, residuals, bool(smallest[0] > 0.0))
+    return Outcome(x, Status.MAX_STEPS, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
 
 
 def solve_linear(equations: Equations, x: Array, right: Array, relative: float) -> Array:

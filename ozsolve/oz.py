@@ -73,8 +73,8 @@ def factorise(c_k: Array, root_rho: Array) -> tuple[list[list[Array]], list[Arra
     return lower, pivots
 
 
-def indirect(c_k: Array, root_rho: Array) -> tuple[Array, Array]:
-    """gamma(k) and the smallest pivot of I - C(k) over all k.
+def indirect(c_k: Array, root_rho: Array) -> tuple[Array, list[Array]]:
+    """gamma(k) and the pivots of I - C(k).
 
     Parameters
     ----------
@@ -85,15 +85,14 @@ def indirect(c_k: Array, root_rho: Array) -> tuple[Array, Array]:
     Returns
     -------
     gamma_k : ndarray, shape (b, pairs, m)
-    smallest : ndarray, shape (b,)
-        Positive exactly when I - C(k) is positive definite at every k.
+    pivots : list of ndarray, each of shape (b, m)
+        All positive exactly where I - C(k) is positive definite.
     """
     species = root_rho.shape[-1]
     if species == 2:
         return _indirect_binary(c_k, root_rho)
     pair = pair_index(species)
     lower, pivots = factorise(c_k, root_rho)
-    smallest = np.min([d.min(axis=-1) for d in pivots], axis=0)
     y: list[list[Array]] = []
     for k in range(species):
         row = []
@@ -111,24 +110,35 @@ def indirect(c_k: Array, root_rho: Array) -> tuple[Array, Array]:
             for k in range(1, species):
                 total += scaled[k][i] * y[k][j]
             gamma_k[:, pair[i][j]] = total
-    return gamma_k, smallest
+    return gamma_k, pivots
 
 
-def _indirect_binary(c_k: Array, root_rho: Array) -> tuple[Array, Array]:
+def _indirect_binary(c_k: Array, root_rho: Array) -> tuple[Array, list[Array]]:
     """The same for two species, multiplied out: a and det/a are the two pivots of the 2 x 2 matrix."""
-    rho_1, rho_2 = root_rho[:, :1] ** 2, root_rho[:, 1:] ** 2
+    rho = root_rho * root_rho
+    rho_1, rho_2 = rho[:, :1], rho[:, 1:]
     c_11, c_12, c_22 = c_k[:, 0], c_k[:, 1], c_k[:, 2]
     a = 1.0 - rho_1 * c_11
     d = 1.0 - rho_2 * c_22
     square = c_12 * c_12
-    second = d - (rho_1 * rho_2) * square / a
-    smallest = np.minimum(a.min(axis=-1), second.min(axis=-1))
-    inverse = 1.0 / (a * second)
+    determinant = a * d
+    determinant -= (rho_1 * rho_2) * square
+    inverse = 1.0 / determinant
     gamma_k = np.empty_like(c_k)
-    gamma_k[:, 0] = (d * c_11 + rho_2 * square) * inverse - c_11
-    gamma_k[:, 1] = c_12 * inverse - c_12
-    gamma_k[:, 2] = (a * c_22 + rho_1 * square) * inverse - c_22
-    return gamma_k, smallest
+    for slot, (other, c, rho_other) in enumerate(((d, c_11, rho_2), (a, c_22, rho_1))):
+        out = gamma_k[:, 2 * slot]
+        np.multiply(other, c, out=out)
+        out += rho_other * square
+        out *= inverse
+        out -= c
+    np.multiply(c_12, inverse, out=gamma_k[:, 1])
+    gamma_k[:, 1] -= c_12
+    return gamma_k, [a, determinant / a]
+
+
+def smallest_pivot(pivots: list[Array]) -> Array:
+    """Smallest pivot over all k, shape (b,): positive exactly when I - C(k) is positive definite at every k."""
+    return np.min([pivot.min(axis=-1) for pivot in pivots], axis=0)
 
 
 def indirect_response(h_k: Array, rho: Array, dc_k: Array) -> Array:

@@ -48,7 +48,8 @@ class Root:
     reached : float
         Fraction of the requested beta that was reached; 1 on success.
     reference : ndarray, shape (1, size)
-        r gamma of the Percus-Yevick hard-sphere mixture.
+        r gamma of the Percus-Yevick hard-sphere mixture; only a rough start when the closure has no
+        use for it.
     residuals : list of float
     """
 
@@ -106,17 +107,20 @@ def find_root(
     start, reference_start : ndarray, shape (1, size), optional
         Warm starts for the state and for its hard-sphere reference.
     """
-    hard = fluid.scaled(attraction=0.0)
-    size = fluid.core.shape[1] * (grid.points - 1)
-    reference, reference_status = _hard_spheres(hard, grid, rule, stepper, counters, reference_start)
-    zero = np.zeros((1, size))
-    if reference_status is not Status.SOLVED:
-        equations = Equations(fluid, grid, closure)
-        return Root(equations, zero, reference_status, 0.0, reference, [], counters)
+    hard = Equations(fluid.scaled(attraction=0.0), grid, PY)
     bridge = None
     if closure.needs_reference:
-        bridge = bridge_function(reference, Equations(hard, grid, PY))
+        reference, status = _hard_spheres(hard, rule, stepper, counters, reference_start)
+        if status is Status.SOLVED:
+            bridge = bridge_function(reference, hard)
+    elif reference_start is not None:
+        reference, status = reference_start, Status.SOLVED
+    else:  # only a starting point: no need to be precise
+        loose = StoppingRule(max(LOOSE, rule.tolerance), rule.max_steps)
+        reference, status = _hard_spheres(hard, loose, stepper, counters, None)
     equations = Equations(fluid, grid, closure, bridge)
+    if status is not Status.SOLVED:
+        return Root(equations, np.zeros_like(reference), status, 0.0, reference, [], counters)
     outcome = _quick(equations, reference, start, rule, stepper, counters)
     if outcome.good and _on_first_branch(equations, outcome.x):
         return Root(equations, outcome.x, Status.SOLVED, 1.0, reference, outcome.residuals, counters)
@@ -124,17 +128,16 @@ def find_root(
 
 
 def _hard_spheres(
-    hard: Fluid, grid: Grid, rule: StoppingRule, stepper: Anderson, counters: Counters, start: Array | None
+    equations: Equations, rule: StoppingRule, stepper: Anderson, counters: Counters, start: Array | None
 ) -> tuple[Array, Status]:
     """Percus-Yevick hard spheres, directly or by continuation in the density."""
-    equations = Equations(hard, grid, PY)
     x = np.zeros((1, equations.shape[1] * equations.shape[2])) if start is None else start
     outcome = counters.add(iterate(equations, x, rule, stepper))
     if outcome.good:
         return outcome.x, Status.SOLVED
 
     def at(t: float) -> Equations:
-        return Equations(hard.scaled(density=t), grid, PY)
+        return Equations(equations.fluid.scaled(density=t), equations.grid, PY)
 
     path = follow(at, np.zeros_like(x), rule, stepper)
     counters.add_rungs(path.rungs)

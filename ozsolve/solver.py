@@ -42,6 +42,8 @@ MAX_REFINEMENTS = 4
 RESIDUAL_SHARE = 1e-3
 """Tolerance of the residual as a share of the accuracy asked."""
 SMALLEST_TOLERANCE = 2e-12
+COARSE_TOLERANCE_FACTOR = 10.0
+"""The coarse grid only feeds the error bar and the fine grid's start."""
 RESIDUAL_GAIN = 30.0
 """How much a residual may be amplified on its way to a coordination number."""
 
@@ -137,10 +139,11 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     counters = Counters()
     species = fluid.rho.shape[1]
     grid = first_grid(fluid, accuracy)
-    coarse = find_root(fluid, grid, closure, rule, stepper, counters)
+    rough_rule = StoppingRule(max(COARSE_TOLERANCE_FACTOR * tolerance, SMALLEST_TOLERANCE))
+    coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
     while coarse.status is Status.SOLVED and _tail(coarse) > accuracy and 2 * grid.points <= MAX_POINTS // REFINEMENT:
         wider = Grid(grid.spacing, 2 * grid.points)
-        coarse = _move(coarse, grid, wider, fluid, closure, rule, stepper, counters)
+        coarse = _move(coarse, grid, wider, fluid, closure, rough_rule, stepper, counters)
         grid = wider
     missing = Observables.missing(species)
     if coarse.status is not Status.SOLVED:

@@ -88,7 +88,7 @@ def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
             )  # fmt: skip
     right.set_ylim(0.0, 2.6 * max(item[2] for item in counts) + 1e-12)
     right.set_ylabel("neighbours within r")
-    axis.set_title(f"{curve.center} - {curve.neighbor}", pad=8 + 12 * len(handles))
+    axis.set_title(f"{curve.center} - {curve.neighbor}", pad=44)
     axis.legend(
         handles, [str(h.get_label()) for h in handles], loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1,
         handlelength=2.6, borderaxespad=0.2, labelspacing=0.25,
