@@ -81,11 +81,11 @@ class Equations:
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""
-        return np.multiply(x.reshape(self.shape), self._inverse_r)
+        return np.asarray(np.multiply(x.reshape(self.shape), self._inverse_r))
 
     def pair_table(self, pairs: Array) -> Array:
         """A symmetric (s, s) table from values per pair i <= j."""
-        return pairs[np.array(pair_index(self.fluid.rho.shape[-1]))]
+        return np.asarray(pairs[np.array(pair_index(self.fluid.rho.shape[-1]))])
 
     def direct_r(self, x: Array) -> Array:
         """r times the segment-weighted c(r), shape (b, pairs, m)."""

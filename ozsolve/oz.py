@@ -138,7 +138,7 @@ def _indirect_binary(c_k: Array, root_rho: Array) -> tuple[Array, list[Array]]:
 
 def smallest_pivot(pivots: list[Array]) -> Array:
     """Smallest pivot over all k, shape (b,): positive exactly when I - C(k) is positive definite at every k."""
-    return np.min([pivot.min(axis=-1) for pivot in pivots], axis=0)
+    return np.asarray(np.min([pivot.min(axis=-1) for pivot in pivots], axis=0))
 
 
 def indirect_response(h_k: Array, rho: Array, dc_k: Array) -> Array:

@@ -125,9 +125,17 @@ def _shells(out: Console, report: StateReport) -> None:
     for i, center in enumerate(names):
         for j, neighbor in enumerate(names):
             if i != j:
-                values = [f"{r.neighbor_ratios[i, j]:.4f}" for r in sensitivity.results]
+                values = [
+                    f"{r.neighbor_ratios[i, j]:.4f}  ({r.radius[i, j]:.3g}/{r.radius[i, i]:.3g})"
+                    for r in sensitivity.results
+                ]
                 made.add_row(f"{center} <- {neighbor}", *values, f"{sensitivity.spread[i, j]:.4f}")
     out.print(made)
+    out.print(
+        f"In brackets: shell radius of the unlike / of the like pair, {report.request.units.length_label}. "
+        "The first minimum of g may lie inside a wide well.",
+        style="dim",
+    )
 
 
 def _thermodynamics(out: Console, report: StateReport) -> None:
