@@ -132,7 +132,8 @@ def _mixture(table: Table) -> Mixture | None:
     k = _deviation(table, "k", size)
     l_ = _deviation(table, "l", size)
     names = _names(table, size)
-    overrides = _pairs(table, names)
+    labels = names or [str(n + 1) for n in range(size or 0)]
+    overrides = _pairs(table, labels) if names or "names" not in table.content else ()
     if len(table.problems) > before or diameter is None or depth is None:
         return None
     try:
@@ -180,7 +181,7 @@ def _deviation(table: Table, key: str, size: int | None) -> Any:
     return array
 
 
-def _pairs(table: Table, names: list[str] | None) -> tuple[PairOverride, ...]:
+def _pairs(table: Table, names: list[str]) -> tuple[PairOverride, ...]:
     raw = table.content.get("pairs", [])
     if not isinstance(raw, list):
         table.complain("pairs", raw, "write each pair as a [[mixture.pairs]] table")
@@ -192,8 +193,7 @@ def _pairs(table: Table, names: list[str] | None) -> tuple[PairOverride, ...]:
         pair.known(PAIR_KEYS)
         between = pair.content.get("between")
         if (
-            names is None
-            or not isinstance(between, list)
+            not isinstance(between, list)
             or len(between) != 2
             or between[0] == between[1]
             or any(name not in names for name in between)

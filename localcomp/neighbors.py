@@ -58,7 +58,8 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
     Raises
     ------
     NoAnswer
-        If the solution failed, or the rule has no radius at this state.
+        If the solution failed, the rule has no radius at this state, or a shell holds nothing to
+        compare with.
 
     Examples
     --------
@@ -72,21 +73,31 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
     rule = rule if rule is not None else WellEdge()
     radius = rule.radius(solution)
     integral, bar = solution.shell_integral(radius)
+    _refuse_empty(solution, integral)
     rho = solution.densities
     counts = rho[None, :] * integral
     count_bars = rho[None, :] * bar
     total = counts.sum(axis=1, keepdims=True)
     fractions = counts / total
-    relative = bar / integral
+    relative = np.divide(bar, np.abs(integral), out=np.zeros_like(bar), where=integral != 0.0)
     own = np.diag(integral)[:, None]
     ratios = integral / own
-    ratio_bars = ratios * (relative + np.diag(relative)[:, None])
+    ratio_bars = np.abs(ratios) * (relative + np.diag(relative)[:, None])
     np.fill_diagonal(ratio_bars, 0.0)
-    fraction_bars = fractions * (1.0 - fractions) * (relative + relative.max(axis=1, keepdims=True))
+    fraction_bars = np.abs(fractions * (1.0 - fractions)) * (relative + relative.max(axis=1, keepdims=True))
     tables = (radius, counts, fractions, ratios, count_bars, fraction_bars, ratio_bars)
     for table in tables:
         table.setflags(write=False)
     return Neighbors(rule, *tables)
+
+
+def _refuse_empty(solution: Solution, integral: Array) -> None:
+    """A shoulder too high to climb leaves nothing within the well edge, and ratios have no meaning."""
+    for name, own in zip(solution.mixture.names, np.diag(integral), strict=True):
+        if own == 0.0:
+            raise NoAnswer(
+                f"no {name} can be inside the shell of a {name}, so there is no ratio; use another shell rule"
+            )
 
 
 @dataclass(frozen=True)
@@ -109,7 +120,13 @@ class ShellSensitivity:
 
 
 def shell_sensitivity(solution: Solution, multiple: float = 1.5) -> ShellSensitivity:
-    """Neighbours under all three shell rules and how much the ratios hinge on the rule."""
+    """Neighbours under all three shell rules and how much the ratios hinge on the rule.
+
+    Raises
+    ------
+    NoAnswer
+        If no rule has an answer.
+    """
     results: list[Neighbors] = []
     missing: list[str] = []
     for rule in (WellEdge(), FirstMinimum(), FixedMultiple(multiple)):
@@ -117,5 +134,7 @@ def shell_sensitivity(solution: Solution, multiple: float = 1.5) -> ShellSensiti
             results.append(count_neighbors(solution, rule))
         except NoAnswer as reason:
             missing.append(f"{rule.description}: {reason}")
+    if not results:
+        raise NoAnswer("; ".join(missing))
     ratios = np.array([result.neighbor_ratios for result in results])
     return ShellSensitivity(tuple(results), tuple(missing), np.ptp(ratios, axis=0))

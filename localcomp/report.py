@@ -27,6 +27,8 @@ from ozsolve import CLOSURES, Solution, solve
 
 Array = NDArray[np.float64]
 
+NO_SHELL = "no_shell"
+"""Status of a state that was solved but where the shell rule has no radius."""
 CAUTION = (
     "Idealised spheres with square wells: no shape, no hydrogen bonds. Verify against measured phase equilibria "
     "before a model is chosen for a real separation; local codes and licensed practice decide."
@@ -59,6 +61,16 @@ class StateReport:
     def usable(self) -> bool:
         """Whether there are numbers to show."""
         return self.neighbors is not None
+
+    @property
+    def status(self) -> str:
+        """The word used in files."""
+        return NO_SHELL if self.shell_reason else self.solution.status.value
+
+    @property
+    def message(self) -> str:
+        """One sentence about the end."""
+        return self.shell_reason or self.solution.message
 
     @property
     def warnings(self) -> tuple[str, ...]:
@@ -121,8 +133,8 @@ def as_json(report: StateReport) -> dict[str, Any]:
     solution, request = report.solution, report.request
     units = request.units
     body: dict[str, Any] = {
-        "status": solution.status.value,
-        "message": report.shell_reason or solution.message,
+        "status": report.status,
+        "message": report.message,
         "closure": request.closure,
         "names": list(request.mixture.names),
         "temperature": request.state.temperature,
@@ -242,14 +254,15 @@ def as_csv(reports: list[StateReport]) -> str:
     writer = csv.writer(buffer, lineterminator="\n")
     models = [f"{s.model.label}; {s.reading.label}" for r in reports if r.usable for s in r.statements]
     labels = list(dict.fromkeys(models))
-    writer.writerow(
-        ["closure", "status", "center", "neighbor", "shell_radius", "coordination_number",
-         "coordination_number_error", "local_mole_fraction", "local_mole_fraction_error", "neighbor_ratio",
-         "neighbor_ratio_error", "contact_value", "contact_value_error", *(f"stated ratio: {name}" for name in labels)]
-    )  # fmt: skip
+    columns = [
+        "closure", "status", "center", "neighbor", "shell_radius", "coordination_number",
+        "coordination_number_error", "local_mole_fraction", "local_mole_fraction_error", "neighbor_ratio",
+        "neighbor_ratio_error", "contact_value", "contact_value_error", *(f"stated ratio: {name}" for name in labels),
+    ]  # fmt: skip
+    writer.writerow(columns)
     for report in reports:
         names = report.request.mixture.names
-        head = [report.request.closure, report.solution.status.value]
+        head = [report.request.closure, report.status]
         found = report.neighbors
         for i, center in enumerate(names):
             for j, neighbor in enumerate(names):
@@ -263,5 +276,5 @@ def as_csv(reports: list[StateReport]) -> str:
                     )  # fmt: skip
                     row += [repr(float(table[i, j])) for table in tables]
                     row += [repr(float(s.stated[i, j])) for s in report.statements]
-                writer.writerow(row)
+                writer.writerow(row + [""] * (len(columns) - len(row)))
     return buffer.getvalue()

@@ -11,7 +11,11 @@ from typing import Any
 
 from localcomp.errors import BadInput, Problem
 
-LARGEST_FILE = 4 * 1024 * 1024
+LARGEST_FILE = 64 * 1024
+"""Bytes; the TOML parser's time can grow with the square of the size."""
+SMALLEST_NUMBER, LARGEST_NUMBER = 1e-30, 1e30
+"""Sizes of numbers in files: their cubes and quotients stay finite, SI units of molecules included."""
+LONGEST_SHOWN = 60
 
 
 def load_toml(path: Path) -> dict[str, Any]:
@@ -30,14 +34,15 @@ def load_toml(path: Path) -> dict[str, Any]:
     try:
         if path.is_dir():
             raise fail("is a directory; name a TOML file")
-        if path.exists() and path.stat().st_size > LARGEST_FILE:
-            raise fail(f"is larger than {LARGEST_FILE // 1024**2} MiB; a state file has a few lines")
-        raw = path.read_bytes()
+        with path.open("rb") as stream:  # a bounded read: devices and pipes have no size to ask for
+            raw = stream.read(LARGEST_FILE + 1)
     except FileNotFoundError:
         near = _nearest(path.name, [p.name for p in _siblings(path)])
         raise fail(f"no such file{near}") from None
     except (OSError, ValueError) as error:
         raise fail(f"cannot be read ({getattr(error, 'strerror', None) or error})") from None
+    if len(raw) > LARGEST_FILE:
+        raise fail(f"is larger than {LARGEST_FILE // 1024} KiB; a state file has a few lines")
     if not raw.strip():
         raise fail("is empty; `localcomp new DIR` writes a file to start from")
     try:
@@ -65,9 +70,15 @@ def _nearest(name: str, known: Iterable[str]) -> str:
 
 
 def show(value: object) -> str:
-    """A value as it may appear in a message: short."""
-    text = repr(value)
-    return text if len(text) <= 60 else text[:57] + "..."
+    """A value as it may appear in a message: short, on one line."""
+    try:
+        return _shortened(repr(value))
+    except (ValueError, RecursionError):  # integers of thousands of digits, tables nested thousands deep
+        return f"a {type(value).__name__} too long to show"
+
+
+def _shortened(text: str) -> str:
+    return text if len(text) <= LONGEST_SHOWN else text[: LONGEST_SHOWN - 3] + "..."
 
 
 class Table:
@@ -95,6 +106,7 @@ class Table:
             self._add("", content, "must be a table of keys")
 
     def _add(self, key: str, value: object, allowed: str, *, shown: bool = True) -> None:
+        key = _shortened(key if key.isprintable() else repr(key))
         where = f"[{self.name}] {key}".strip() if self.name else key
         self.problems.append(Problem(self.file, where, show(value) if shown else "", allowed))
 
@@ -122,11 +134,8 @@ class Table:
             if default is None:
                 self.missing(key, allowed)
             return default
-        value = as_number(self.content[key])
-        if value is None or not accept(value):
-            self._add(key, self.content[key], allowed)
-            return None
-        return value
+        values = self._accepted(key, [self.content[key]], allowed, accept)
+        return None if values is None else values[0]
 
     def optional_number(self, key: str, allowed: str, accept: Callable[[float], bool]) -> float | None:
         """A number if the key is there."""
@@ -141,22 +150,30 @@ class Table:
             return None
         raw = self.content[key]
         if scalar and not isinstance(raw, list):
-            value = as_number(raw)
-            if value is None or not accept(value):
-                self._add(key, raw, allowed)
-                return None
-            return [value] * (size or 1)
+            values = self._accepted(key, [raw], allowed, accept)
+            return None if values is None else values * (size or 1)
         if not isinstance(raw, list) or not raw:
             self._add(key, raw, allowed)
             return None
-        values = [as_number(item) for item in raw]
-        if any(v is None or not accept(v) for v in values):
-            self._add(key, raw, allowed)
-            return None
-        if size is not None and len(values) != size:
+        values = self._accepted(key, raw, allowed, accept)
+        if values is not None and size is not None and len(values) != size:
             self._add(key, raw, f"{allowed}; {size} of them, one per species, not {len(values)}")
             return None
-        return [v for v in values if v is not None]
+        return values
+
+    def _accepted(
+        self, key: str, items: list[Any], allowed: str, accept: Callable[[float], bool]
+    ) -> list[float] | None:
+        """All items as numbers, or None after a complaint."""
+        numbers = [number for number in map(as_number, items) if number is not None and accept(number)]
+        if len(numbers) < len(items):
+            self._add(key, self.content[key], allowed)
+            return None
+        if not all(number == 0.0 or SMALLEST_NUMBER <= abs(number) <= LARGEST_NUMBER for number in numbers):
+            limits = f"; in size between {SMALLEST_NUMBER:g} and {LARGEST_NUMBER:g}"
+            self._add(key, self.content[key], allowed + limits)
+            return None
+        return numbers
 
     def word(self, key: str, choices: Iterable[str], default: str) -> str:
         """One of a few words, any case."""

@@ -22,7 +22,7 @@ def calibrate(
     if json:
         print_json(calibration_json(result))
         return
-    from localcomp.cli.state_tables import console, table
+    from localcomp.cli.state_tables import console, put, table
 
     out = console()
     out.print(
@@ -34,12 +34,12 @@ def calibrate(
     made.add_row("well depth eps/k", f"{result.well_depth:.4f}", "K")
     made.add_row("reduced temperature T* = kT/eps", f"{result.reduced_temperature:.5f}", "")
     made.add_row("packing fraction eta", f"{result.packing_fraction:.5f}", "")
-    out.print(made)
+    put(out, made)
     made = table("\nConditions", "quantity", "measured", "reached", "unit")
     made.add_row("residual energy", f"{liquid.residual_energy:.2f}", f"{result.residual_energy:.2f}", "J/mol")
     made.add_row("pressure, energy route", f"{liquid.pressure:.3f}", f"{result.pressure:.3f}", "kPa")
     made.add_row("pressure, virial route", "", f"{result.virial_pressure:.1f}", "kPa")
-    out.print(made)
+    put(out, made)
     out.print(
         "The virial route is not fitted; its distance is the closure's own inconsistency. These parameters describe "
         "the liquid at this temperature; they do not give the gas's second virial coefficient.",

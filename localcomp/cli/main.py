@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 from typing import Annotated
@@ -47,6 +48,8 @@ app.command("calibrate")(calibrate_command.calibrate)
 
 def run() -> None:
     """Entry point: turns every failure into a message and an exit status, never a traceback."""
+    if isinstance(sys.stdout, io.TextIOWrapper):  # a character the terminal cannot show is no reason to stop
+        sys.stdout.reconfigure(errors="replace")
     try:
         app()
     except BadInput as error:

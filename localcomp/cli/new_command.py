@@ -15,10 +15,12 @@ def new(directory: Annotated[Path, typer.Argument(metavar="DIR", help="Where to 
     from localcomp.templates import LIQUID_TOML, STATE_TOML
 
     files = {"state.toml": STATE_TOML, "liquid.toml": LIQUID_TOML}
-    for name in files:
-        if (directory / name).exists():
-            raise BadInput([Problem(str(directory / name), "", "", "exists already and is not overwritten")])
     try:
+        if directory.exists() and not directory.is_dir():
+            raise BadInput([Problem(str(directory), "", "", "is a file; name a directory")])
+        for name in files:
+            if (directory / name).exists():
+                raise BadInput([Problem(str(directory / name), "", "", "exists already and is not overwritten")])
         directory.mkdir(parents=True, exist_ok=True)
         for name, text in files.items():
             (directory / name).write_text(text, encoding="utf-8")

@@ -38,8 +38,8 @@ def state(
     from localcomp.report import as_csv, as_json, report_state
     from localcomp.report import compare_closures as all_closures
 
-    check_writable("--csv", csv)
-    check_writable("--plot", plot, FIGURE_SUFFIXES)
+    check_writable("--csv", csv, file)
+    check_writable("--plot", plot, file, FIGURE_SUFFIXES)
     request = _overridden(read_state(file), closure, accuracy)
     report = report_state(request)
     others = all_closures(request) if compare_closures else []
@@ -59,8 +59,11 @@ def state(
     if plot is not None and report.usable:
         _draw(report, plot)
     if not report.usable:
+        if plot is not None:
+            typer.echo(f"no figure: {plot} was not written", err=True)
         if not json:
-            typer.echo(f"no physical solution: {report.shell_reason or report.solution.message}", err=True)
+            lead = "no answer" if report.shell_reason else "no physical solution"
+            typer.echo(f"{lead}: {report.message}", err=True)
         raise typer.Exit(3)
 
 
@@ -82,12 +85,13 @@ def _overridden(request: StateFile, closure: str | None, accuracy: float | None)
 
 def _draw(report: StateReport, path: Path) -> None:
     from localcomp.curves import pair_curves
-    from localcomp.figures.distribution import distribution_figure
+    from localcomp.figures.distribution import distribution_figure, short
     from localcomp.figures.style import save
 
     request = report.request
     fractions = ", ".join(
-        f"x({name}) = {x:.4g}" for name, x in zip(request.mixture.names, request.state.mole_fractions, strict=True)
+        f"x({short(name)}) = {x:.4g}"
+        for name, x in zip(request.mixture.names, request.state.mole_fractions, strict=True)
     )
     unit = "K" if request.units.real else ""
     symbol = "T" if request.units.real else "kT"

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+from rich.cells import cell_len
 from rich.console import Console
 from rich.table import Table
 from rich.text import Text
@@ -11,12 +12,13 @@ from rich.text import Text
 from localcomp.report import CAUTION, StateReport, pressure_mpa
 
 WIDTH = 100
+LABEL = 32
 
 
 def console() -> Console:
-    """A console that keeps tables whole when output goes to a file."""
-    plain = Console(highlight=False)
-    return plain if plain.is_terminal else Console(highlight=False, width=WIDTH)
+    """A console that keeps tables whole when output goes to a file, and prints names letter by letter."""
+    plain = Console(highlight=False, markup=False, emoji=False)
+    return plain if plain.is_terminal else Console(highlight=False, markup=False, emoji=False, width=WIDTH)
 
 
 def with_error(value: float, bar: float) -> str:
@@ -29,12 +31,27 @@ def with_error(value: float, bar: float) -> str:
     return f"{value:.{digits}f}({math.ceil(bar * 10**digits - 0.05)})"
 
 
+def plain(value: float, decimals: int = 4) -> str:
+    """A number without error bar: a few decimals, or three digits when those would mislead."""
+    if not math.isfinite(value):
+        return "-"
+    return f"{value:.{decimals}f}" if value == 0.0 or 1e-2 <= abs(value) < 1e5 else f"{value:.3g}"
+
+
 def table(title: str, *columns: str) -> Table:
     """A table in the house style: light rules, right-aligned numbers."""
     made = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 2, 0, 0))
     for n, column in enumerate(columns):
-        made.add_column(column, justify="left" if n == 0 else "right", no_wrap=n == 0)
+        made.add_column(column, justify="left" if n == 0 else "right", overflow="fold")
     return made
+
+
+def put(out: Console, made: Table) -> None:
+    """Print a table; when it is too wide its headers wrap and labels beyond `LABEL`, numbers never do."""
+    for n, column in enumerate(made.columns):
+        widest = max((cell_len(str(cell)) for cell in column.cells), default=0)
+        column.min_width = min(widest, LABEL) if n == 0 else widest
+    out.print(made, crop=False)
 
 
 def print_state(report: StateReport) -> None:
@@ -87,7 +104,7 @@ def _neighbors(out: Console, report: StateReport) -> None:
                 "1" if i == j else with_error(found.neighbor_ratios[i, j], found.ratio_errors[i, j]),
                 with_error(report.solution.contact_values[i, j], errors.contact[i, j]),
             )
-    out.print(made)
+    put(out, made)
     if len(names) > 1:
         out.print("R_ij = (N_ij/N_ii)/(x_j/x_i): 1 when the centre i does not care.", style="dim")
 
@@ -103,11 +120,11 @@ def _statements(out: Console, report: StateReport) -> None:
         chosen = pairs[start : start + 2]
         heads = [head for i, j in chosen for head in (f"R {names[i]} <- {names[j]}", "stated/found")]
         made = table("\nWhat models state for these energies" if start == 0 else "", "model (energy reading)", *heads)
-        made.add_row("found", *[cell for i, j in chosen for cell in (f"{found.neighbor_ratios[i, j]:.4f}", "")])
+        made.add_row("found", *[cell for i, j in chosen for cell in (plain(found.neighbor_ratios[i, j]), "")])
         for s in report.statements:
-            cells = [cell for i, j in chosen for cell in (f"{s.stated[i, j]:.4f}", f"{s.off[i, j]:.3f}")]
+            cells = [cell for i, j in chosen for cell in (plain(s.stated[i, j]), plain(s.off[i, j], 3))]
             made.add_row(f"{s.model.label} ({s.reading.label})", *cells)
-        out.print(made)
+        put(out, made)
     out.print(
         "Reading: the energy a parameter stands for, one contact (m = 1) or all contacts of a molecule (m = z/2, "
         "z = 10). stated/found = 1: the model's statement holds.",
@@ -126,11 +143,11 @@ def _shells(out: Console, report: StateReport) -> None:
         for j, neighbor in enumerate(names):
             if i != j:
                 values = [
-                    f"{r.neighbor_ratios[i, j]:.4f}  ({r.radius[i, j]:.3g}/{r.radius[i, i]:.3g})"
+                    f"{plain(r.neighbor_ratios[i, j])}  ({r.radius[i, j]:.3g}/{r.radius[i, i]:.3g})"
                     for r in sensitivity.results
                 ]
                 made.add_row(f"{center} <- {neighbor}", *values, f"{sensitivity.spread[i, j]:.4f}")
-    out.print(made)
+    put(out, made)
     out.print(
         f"In brackets: shell radius of the unlike / of the like pair, {report.request.units.length_label}. "
         "The first minimum of g may lie inside a wide well.",
@@ -161,7 +178,7 @@ def _thermodynamics(out: Console, report: StateReport) -> None:
     if len(x) == 2 and min(x) > 0.0:
         ratio = solution.concentration_structure_factor[0, 0] / (x[0] * x[1])
         made.add_row("S_cc(0)/(x1 x2)", f"{ratio:.4f}", "1 if ideal, infinite at the spinodal")
-    out.print(made)
+    put(out, made)
     out.print("The gaps are the closure's own inconsistency: zero for an exact theory.", style="dim")
 
 
@@ -191,7 +208,7 @@ def print_comparison(reports: list[StateReport]) -> None:
     row("Z, energy route", [r.route.z if r.route else None for r in reports])
     row("1/(rho kT kappa_T), compressibility", [s.inverse_compressibility if s else None for s in usable])
     row("  gap to the virial route", [s.route_gap if s else None for s in usable])
-    out.print(made)
+    put(out, made)
     for r in reports:
         if not r.usable:
-            out.print(f"{r.request.closure}: {r.shell_reason or r.solution.message}", style="yellow")
+            out.print(f"{r.request.closure}: {r.message}", style="yellow")

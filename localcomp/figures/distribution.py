@@ -14,6 +14,8 @@ from localcomp.figures.style import COUNT, FOUND, GRID, INK, SECOND, SHELL, look
 
 Array = NDArray[np.float64]
 
+LONGEST_NAME = 16
+
 
 @dataclass(frozen=True)
 class PairCurve:
@@ -61,7 +63,13 @@ def distribution_figure(curves: Sequence[PairCurve], title: str, length_label: s
     return figure
 
 
+def short(name: str) -> str:
+    """A name that fits into a panel."""
+    return name if len(name) <= LONGEST_NAME else name[: LONGEST_NAME - 1] + "…"
+
+
 def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
+    center, neighbor = short(curve.center), short(curve.neighbor)
     axis.axvspan(curve.core, curve.shell, color=SHELL, zorder=0)
     axis.axhline(1.0, color=GRID, lw=0.8, zorder=1)
     (line,) = axis.plot(curve.r, curve.g, color=FOUND, lw=1.6, zorder=3, label="g(r), left scale")
@@ -71,9 +79,9 @@ def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
     axis.set_ylabel("g(r)", color=FOUND)
     right = axis.twinx()
     right.spines["right"].set_visible(True)
-    counts = [(f"{curve.neighbor} within r of {curve.center}", curve.count, curve.count_in_shell, COUNT, "--")]
+    counts = [(f"{neighbor} within r of {center}", curve.count, curve.count_in_shell, COUNT, "--")]
     if curve.reverse_count is not None:
-        label = f"{curve.center} within r of {curve.neighbor}"
+        label = f"{center} within r of {neighbor}"
         counts.append((label, curve.reverse_count, curve.reverse_in_shell, SECOND, ":"))
     handles = [line]
     for n, (label, values, in_shell, color, dash) in enumerate(counts):
@@ -86,9 +94,9 @@ def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
                 f"{in_shell:.2f}", (curve.shell, in_shell), xytext=offset, textcoords="offset points", color=color,
                 fontsize=8,
             )  # fmt: skip
-    right.set_ylim(0.0, 2.6 * max(item[2] for item in counts) + 1e-12)
+    right.set_ylim(0.0, 2.6 * max(item[2] for item in counts) or 1.0)
     right.set_ylabel("neighbours within r")
-    axis.set_title(f"{curve.center} - {curve.neighbor}", pad=44)
+    axis.set_title(f"{center} - {neighbor}", pad=44)
     axis.legend(
         handles, [str(h.get_label()) for h in handles], loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=1,
         handlelength=2.6, borderaxespad=0.2, labelspacing=0.25,

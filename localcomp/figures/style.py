@@ -26,6 +26,7 @@ RC: dict[str, Any] = {
     "axes.edgecolor": INK,
     "axes.labelcolor": INK,
     "text.color": INK,
+    "text.parse_math": False,  # a dollar sign in a name is a dollar sign
     "xtick.color": INK,
     "ytick.color": INK,
     "axes.spines.top": False,

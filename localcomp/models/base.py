@@ -113,6 +113,7 @@ def compare(found: Array, given: StatementInput, models: Sequence[StatementModel
     out = []
     for model in models:
         for reading in model.readings:
-            stated = model.ratios(given, reading)
+            with np.errstate(over="ignore"):  # high shoulders: the model then states infinity
+                stated = model.ratios(given, reading)
             out.append(Statement(model, reading, stated, stated / found))
     return out

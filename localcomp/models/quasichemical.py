@@ -9,8 +9,15 @@ import numpy as np
 
 from localcomp.models.base import Array, Reading, StatementInput
 
-MAX_STEPS = 500
-TOLERANCE = 1e-14
+MAX_STEPS = 200
+TOLERANCE = 1e-13
+"""Of ln g."""
+ROUND_OFF = 2e-15
+"""Of the equations' residual: nothing better can be reached."""
+LARGEST_MOVE = 1.0
+"""Of ln g in one step."""
+LARGEST_EXPONENT = 20.0
+"""Of a contact's preference in kT; beyond it the equations are singular in floating-point numbers."""
 
 
 @dataclass(frozen=True)
@@ -29,17 +36,24 @@ class QuasiChemical:
         return (Reading(1.0, "m = 1"),)
 
     def ratios(self, given: StatementInput, reading: Reading) -> Array:
-        """R_ij = (q_j/q_i)(G_j/G_i) exp(D_ij), shape (s, s)."""
+        """R_ij = (q_j/q_i)(G_j/G_i) exp(D_ij), shape (s, s); NaN beyond `LARGEST_EXPONENT`."""
         surface = given.diameter**2
         half = 0.5 * np.diag(given.reduced_depth)
-        boltzmann = np.exp(reading.contacts * (given.reduced_depth - half[:, None] - half[None, :]))
+        exponent = reading.contacts * (given.reduced_depth - half[:, None] - half[None, :])
+        if float(np.max(np.abs(exponent))) > LARGEST_EXPONENT:
+            return np.full_like(exponent, np.nan)
+        boltzmann = np.exp(exponent)
         theta = surface * given.mole_fractions
         factor = contact_factors(theta / theta.sum(), boltzmann)
         return np.asarray((surface * factor)[None, :] / (surface * factor)[:, None] * boltzmann)
 
 
 def contact_factors(theta: Array, boltzmann: Array) -> Array:
-    """G_i exp(beta eps_ii/2), the solution of g_i sum_j theta_j g_j E_ij = 1.
+    """g_i = G_i exp(beta eps_ii/2), the solution of g_i sum_j theta_j g_j E_ij = 1.
+
+    Newton steps in u = ln g. With P_ij = theta_j g_i g_j E_ij the equations are sum_j P_ij = 1 and
+    their derivative by u is diag(sum_j P_ij) + P; for theta > 0 they are the stationary point of the
+    convex function sum_ij theta_i theta_j g_i g_j E_ij/2 - sum_i theta_i u_i, so there is one solution.
 
     Parameters
     ----------
@@ -51,12 +65,15 @@ def contact_factors(theta: Array, boltzmann: Array) -> Array:
     Raises
     ------
     ArithmeticError
-        If the damped substitution does not settle (extreme energies).
+        If the steps do not settle (energies beyond `LARGEST_EXPONENT`).
     """
     g = np.ones_like(theta)
     for _ in range(MAX_STEPS):
-        following = np.sqrt(g / (boltzmann @ (theta * g)))
-        if float(np.max(np.abs(following / g - 1.0))) < TOLERANCE:
-            return np.asarray(following)
-        g = following
-    raise ArithmeticError("the quasi-chemical equations did not settle in 500 steps")
+        pairs = g[:, None] * boltzmann * (theta * g)[None, :]
+        total = pairs.sum(axis=1)
+        move = np.linalg.solve(np.diag(total) + pairs, 1.0 - total)
+        largest = float(np.max(np.abs(move)))
+        g = g * np.exp(move * min(1.0, LARGEST_MOVE / max(largest, TOLERANCE)))
+        if largest < TOLERANCE or float(np.max(np.abs(1.0 - total))) < ROUND_OFF:
+            return np.asarray(g)
+    raise ArithmeticError(f"the quasi-chemical equations did not settle in {MAX_STEPS} steps")
