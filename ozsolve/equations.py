@@ -59,33 +59,50 @@ class Equations:
         self.fluid = fluid
         self.grid = grid
         self.closure = closure
-        batch, pairs = fluid.core.shape
-        self.shape = (batch, pairs, grid.points - 1)
-        self.transform = plan(grid.spacing, grid.points, batch * pairs)
         self.root_rho = np.sqrt(fluid.rho)
         inside_core = self._indicator(fluid.core)
         inside_edge = self._indicator(fluid.edge)
         self.well = inside_edge - inside_core
         self.outside = 1.0 - inside_edge
         self.bridge = np.zeros((1, 1, 1)) if bridge is None else bridge
+        self._finish()
+
+    def _finish(self) -> None:
+        """What follows from fluid, grid, closure, weights and bridge."""
+        fluid, grid, closure = self.fluid, self.grid, self.closure
+        batch, pairs = fluid.core.shape
+        self.shape = (batch, pairs, grid.points - 1)
+        self.transform = plan(grid.spacing, grid.points, batch * pairs)
         self.bound: BoundClosure = closure.bind(
             fluid.attraction[:, :, None], self.bridge, self.well * grid.r, self.outside * grid.r
         )
         self._inverse_r = 1.0 / grid.r
         self._input = self.transform.input.reshape(self.shape)
 
+    def take(self, rows: Array) -> Equations:
+        """The same equations for some states of the batch (integer or boolean index)."""
+        fluid = self.fluid
+        part = object.__new__(Equations)
+        part.fluid = Fluid(fluid.rho[rows], fluid.core[rows], fluid.edge[rows], fluid.attraction[rows])
+        part.grid, part.closure = self.grid, self.closure
+        part.root_rho = self.root_rho[rows]
+        part.well, part.outside = self.well[rows], self.outside[rows]
+        part.bridge = self.bridge if len(self.bridge) == 1 else self.bridge[rows]
+        part._finish()
+        return part
+
     def _indicator(self, edges: Array) -> Array:
         grid = self.grid
         rows = [step_weights(float(edge), grid.spacing, grid.points) for edge in edges.ravel()]
-        return np.array(rows).reshape(self.shape)
+        return np.array(rows).reshape(*edges.shape, -1)
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""
         return np.asarray(np.multiply(x.reshape(self.shape), self._inverse_r))
 
     def pair_table(self, pairs: Array) -> Array:
-        """A symmetric (s, s) table from values per pair i <= j."""
-        return np.asarray(pairs[np.array(pair_index(self.fluid.rho.shape[-1]))])
+        """Symmetric (..., s, s) tables from values (..., pairs), i <= j."""
+        return np.asarray(pairs[..., np.array(pair_index(self.fluid.rho.shape[-1]))])
 
     def direct_r(self, x: Array) -> Array:
         """r times the segment-weighted c(r), shape (b, pairs, m)."""

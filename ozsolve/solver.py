@@ -15,10 +15,11 @@ import numpy as np
 
 from ozsolve.anderson import Anderson
 from ozsolve.closures import RHNC, Closure, get_closure
-from ozsolve.equations import Fluid, regrid
+from ozsolve.equations import Equations, Fluid, regrid
 from ozsolve.errors import InputError, NotConverged
 from ozsolve.grid import Grid, good_size
 from ozsolve.mixture import Mixture, State
+from ozsolve.potential import Array
 from ozsolve.root import Counters, Root, find_root
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.stopping import Status, StoppingRule
@@ -26,7 +27,7 @@ from ozsolve.thermodynamics import Observables, observe
 
 FINEST_ACCURACY, COARSEST_ACCURACY = 1e-10, 1e-2
 DEFAULT_ACCURACY = 1e-5
-REFERENCE_SPACING = 0.04
+REFERENCE_SPACING = 0.03
 """Fine spacing (smallest diameters) that serves the default accuracy; by trial on 200 liquids."""
 ORDER = 5.0
 """Observed order of the error in the spacing; sets how the spacing follows the accuracy."""
@@ -91,7 +92,7 @@ def solve(
     chosen = get_closure(closure)
     if on_failure not in ("raise", "return"):
         raise InputError("on_failure", on_failure, "one of: raise, return")
-    accuracy = _checked_accuracy(accuracy)
+    accuracy = checked_accuracy(accuracy)
     began = time.perf_counter()
     fluid, length = reduced_fluid(mixture, state)
     ladder = _climb(fluid, chosen, accuracy)
@@ -101,7 +102,13 @@ def solve(
     return solution
 
 
-def _checked_accuracy(accuracy: float) -> float:
+def residual_tolerance(accuracy: float) -> float:
+    """Residual at which a solve stops, for the accuracy asked."""
+    return max(RESIDUAL_SHARE * accuracy, SMALLEST_TOLERANCE)
+
+
+def checked_accuracy(accuracy: float) -> float:
+    """The accuracy as a number within the limits, or an `InputError`."""
     try:
         value = float(accuracy)
     except (TypeError, ValueError):
@@ -134,12 +141,12 @@ def first_grid(fluid: Fluid, accuracy: float) -> Grid:
 
 def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     stepper = Anderson()
-    tolerance = max(RESIDUAL_SHARE * accuracy, SMALLEST_TOLERANCE)
+    tolerance = residual_tolerance(accuracy)
     rule = StoppingRule(tolerance)
     counters = Counters()
     species = fluid.rho.shape[1]
     grid = first_grid(fluid, accuracy)
-    rough_rule = StoppingRule(max(COARSE_TOLERANCE_FACTOR * tolerance, SMALLEST_TOLERANCE))
+    rough_rule = StoppingRule(COARSE_TOLERANCE_FACTOR * tolerance)
     coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
     while coarse.status is Status.SOLVED and _tail(coarse) > accuracy and 2 * grid.points <= MAX_POINTS // REFINEMENT:
         wider = Grid(grid.spacing, 2 * grid.points)
@@ -156,7 +163,7 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
             return _Ladder(fine.status, fine, None, missing, missing, np.nan, counters)
         sharp = observe(fine.equations, fine.x)
         floor = RESIDUAL_GAIN * tolerance + _tail(fine)
-        roughness = ERROR_SHARE * sharp.roughness(rough)
+        roughness = ERROR_SHARE * float(sharp.roughness(rough))
         reached = roughness + floor <= accuracy
         last = level == MAX_REFINEMENTS - 1 or finer.points * REFINEMENT > MAX_POINTS
         if reached or last:
@@ -167,16 +174,19 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
 
 
 def _tail(root: Root) -> float:
+    return float(tail(root.equations, root.x)[0])
+
+
+def tail(equations: Equations, x: Array) -> Array:
     """Relative effect of cutting correlations at the extent.
 
     The sine basis puts the mirror image of r h(r) behind the end. The image decays once more on its
     way back to the shell, so its effect is that of r h(r) at twice the extent, about the square of
-    the largest |r h(r)| in the last tenth.
+    the largest |r h(r)| in the last tenth. Shape (b,) for x of shape (b, size).
     """
-    equations = root.equations
     tail_start = int(0.9 * equations.shape[2])
-    rh = root.x.reshape(equations.shape)[:, :, tail_start:]
-    return float(np.abs(rh).max()) ** 2
+    rh = x.reshape(equations.shape)[:, :, tail_start:]
+    return np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2)
 
 
 def _move(
@@ -234,8 +244,8 @@ def _assemble(
         length=length,
         observables=ladder.observables,
         errors=ladder.errors,
-        fine=LevelResult(fine.equations, fine.x, fine.reference),
-        coarse=None if coarse is None else LevelResult(coarse.equations, coarse.x, coarse.reference),
+        fine=LevelResult.of(fine.equations, fine.x, fine.reference),
+        coarse=None if coarse is None else LevelResult.of(coarse.equations, coarse.x, coarse.reference),
         relative_error=ladder.relative_error,
         residuals=tuple(fine.residuals),
         stats=stats,
