@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg.lapack import dposv
 
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Indices
 
 RIDGE = 1e-14
 """Relative ridge on the small normal matrix: below the squared round-off of its entries."""
@@ -30,7 +30,7 @@ class History:
     filled: int = 0
     restarts: int = 0
 
-    def keep(self, rows: Array) -> None:
+    def keep(self, rows: Indices) -> None:
         """Drop the states of the batch that are not listed."""
         for name in ("d_residual", "d_image", "gram", "residual", "image"):
             setattr(self, name, getattr(self, name)[rows])

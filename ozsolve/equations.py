@@ -16,7 +16,7 @@ import numpy as np
 from ozsolve.closures import BoundClosure, Closure
 from ozsolve.grid import Grid, step_weights
 from ozsolve.oz import indirect, indirect_response, pair_index
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Indices
 from ozsolve.transform import plan
 
 
@@ -79,8 +79,8 @@ class Equations:
         self._inverse_r = 1.0 / grid.r
         self._input = self.transform.input.reshape(self.shape)
 
-    def take(self, rows: Array) -> Equations:
-        """The same equations for some states of the batch (integer or boolean index)."""
+    def take(self, rows: Indices) -> Equations:
+        """The same equations for some states of the batch (integer index)."""
         fluid = self.fluid
         part = object.__new__(Equations)
         part.fluid = Fluid(fluid.rho[rows], fluid.core[rows], fluid.edge[rows], fluid.attraction[rows])

@@ -53,7 +53,7 @@ class Scatter:
         matrix = np.ones((size + 1, size + 1))
         matrix[:size, :size] = _kernel(self._where, self._where) + RIDGE * np.eye(size)
         matrix[size, size] = 0.0
-        self._inverse = np.linalg.pinv(matrix)
+        self._inverse = np.asarray(np.linalg.pinv(matrix), dtype=np.float64)
 
 
 def _kernel(a: Array, b: Array) -> Array:

@@ -27,7 +27,7 @@ from ozsolve.interpolation import Scatter, spread_order
 from ozsolve.iteration import BatchOutcome, iterate_many
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import eigenvalues_above
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Indices
 from ozsolve.root import LOOSE, NEAR_INSTABILITY, QUICK_STEPS, bridge_function
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.solver import (
@@ -244,9 +244,7 @@ def _solve_batch(job: _Job, grid: Grid, batch: list[tuple[_Family, int]]) -> Non
         if correction is not None:
             start[row] += correction
     part = fine if len(rows) == len(batch) else fine.take(rows)
-    second = iterate_many(
-        part, start[rows], job.rule, job.stepper, None if shared is None else shared.recycled_fine
-    )
+    second = iterate_many(part, start[rows], job.rule, job.stepper, None if shared is None else shared.recycled_fine)
     _accept(job, batch, coarse, part, first, second, rows, lifted, began)
     if shared is None:
         _remember_secants(batch, first, grid, pairs)
@@ -284,7 +282,7 @@ def _starts(job: _Job, coarse: Equations, batch: list[tuple[_Family, int]]) -> A
 
 def _accept(
     job: _Job, batch: list[tuple[_Family, int]], coarse: Equations, fine: Equations, first: BatchOutcome,
-    second: BatchOutcome, rows: Array, lifted: Array, began: float,
+    second: BatchOutcome, rows: Indices, lifted: Array, began: float,
 ) -> None:  # fmt: skip
     kept = np.flatnonzero(second.good)
     if len(kept) == 0:

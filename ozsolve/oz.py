@@ -17,7 +17,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Flags
 
 
 @lru_cache(maxsize=16)
@@ -178,13 +178,13 @@ def sum_products(terms: list[tuple[Array, Array]]) -> Array:
     return total
 
 
-def eigenvalues_above(c_k: Array, root_rho: Array, bound: float) -> Array:
+def eigenvalues_above(c_k: Array, root_rho: Array, bound: float) -> Flags:
     """Whether every eigenvalue of I - C(k) exceeds the bound at every k; shape (b,), bool.
 
     By Cholesky: I - C - bound I is positive definite exactly then.
     """
     _, pivots = factorise(c_k, root_rho, bound)
-    return smallest_pivot(pivots) > 0.0
+    return np.asarray(smallest_pivot(pivots) > 0.0)
 
 
 def lowest_eigenvalue(c_k: Array, root_rho: Array) -> Array:

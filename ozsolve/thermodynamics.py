@@ -148,7 +148,7 @@ def observe_many(equations: Equations, x: Array) -> Observables:
     c_zero = table(4.0 * math.pi * grid.spacing * (equations.direct_r(x) @ grid.r))
     rho = fluid.rho
     species = rho.shape[1]
-    h_zero = np.linalg.solve(np.eye(species) - c_zero * rho[:, None, :], c_zero)
+    h_zero = np.asarray(np.linalg.solve(np.eye(species) - c_zero * rho[:, None, :], c_zero), dtype=np.float64)
     total = rho.sum(axis=1)
     weights = rho[:, :, None] * rho[:, None, :] / total[:, None, None]
     energy = -0.5 * np.sum(weights * shell * table(fluid.attraction), axis=(1, 2))
