@@ -9,13 +9,13 @@ from __future__ import annotations
 import itertools
 import time
 from collections.abc import Callable, Iterator
-from concurrent.futures import FIRST_COMPLETED, Executor, Future, wait
+from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, wait
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
-from localcomp.errors import NoAnswer
+from localcomp.errors import LocalcompError, NoAnswer
 from localcomp.neighbors import count_neighbors
 from localcomp.report import clean
 from localcomp.shells import ShellRule
@@ -29,6 +29,10 @@ AHEAD = 3
 """Units in flight per worker: enough to keep all busy, few enough to lose little."""
 
 Progress = Callable[[int, int, int], None]
+
+
+class WorkerLost(LocalcompError):
+    """A worker process died; the message says what is safe."""
 
 
 @dataclass(frozen=True)
@@ -162,7 +166,12 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
                 break
             done, flying = wait(flying, return_when=FIRST_COMPLETED)
             for future in done:
-                rows = future.result()
+                try:
+                    rows = future.result()
+                except BrokenExecutor as error:
+                    raise WorkerLost(
+                        f"a worker process died ({error}); what was stored is safe, the same command resumes"
+                    ) from None
                 store.add(rows)
                 computed += len(rows)
                 present += len(rows)

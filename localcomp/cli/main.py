@@ -63,7 +63,7 @@ def run() -> None:
         typer.echo(f"error: {error}", err=True)
         sys.exit(1)
     except KeyboardInterrupt:
-        typer.echo("interrupted; what was stored is safe, the same command resumes", err=True)
+        typer.echo("interrupted", err=True)
         sys.exit(INTERRUPTED)
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())

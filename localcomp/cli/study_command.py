@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     from localcomp.study import Study
 
 STORE_NAME = "states.sqlite"
-STUDY_NAME = "study.toml"
+INTERRUPTED = 130
 
 StudyArgument = Annotated[
     Path, typer.Argument(metavar="STUDY", help="Study file (TOML); `localcomp new --study DIR` writes one.")
@@ -69,8 +69,12 @@ def sweep(
             executor = stack.enter_context(dask_cluster(cluster))
         else:
             executor = stack.enter_context(pool(workers)) if workers > 1 else SerialExecutor()
-        with _Bar(len(found.cases)) as bar:
-            result = run(found, store, executor, workers, bar.update)
+        try:
+            with _Bar(len(found.cases)) as bar:
+                result = run(found, store, executor, workers, bar.update)
+        except KeyboardInterrupt:
+            typer.echo("interrupted; what was stored is safe, the same command resumes", err=True)
+            raise typer.Exit(INTERRUPTED) from None
     rate = f", {result.computed / result.seconds:.0f} states a second" if result.computed else ""
     typer.echo(
         f"{result.total} states: {result.solved} solved, {result.failed} without a physical solution; "
