@@ -8,6 +8,7 @@ densities in its inverse cube, energies in kT.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -15,8 +16,8 @@ import numpy as np
 
 from ozsolve.closures import BoundClosure, Closure
 from ozsolve.grid import Grid, step_weights
-from ozsolve.oz import indirect, indirect_response, pair_index
-from ozsolve.potential import Array, Indices
+from ozsolve.oz import eigenvalues_above, indirect, indirect_response, pair_index
+from ozsolve.potential import Array, Flags, Indices
 from ozsolve.transform import plan
 
 
@@ -116,6 +117,21 @@ class Equations:
         rc_r -= x
         np.subtract(rc_r, self.grid.r, out=self._input)
         return self.transform.forward().reshape(self.shape)
+
+    def direct_zero(self, x: Array) -> Array:
+        """c(k = 0) = 4 pi int c r^2 dr, shape (b, pairs)."""
+        return np.asarray(4.0 * math.pi * self.grid.spacing * (self.direct_r(x) @ self.grid.r))
+
+    def direct_from_zero(self, x: Array) -> Array:
+        """c(k) with k = 0 in front, shape (b, pairs, m + 1).
+
+        Stability is lost at k = 0 first, which the sine transform's own points leave out.
+        """
+        return np.concatenate((self.direct_zero(x)[:, :, None], self.direct_k(x)), axis=-1)
+
+    def definite(self, x: Array) -> Flags:
+        """Whether I - C(k) is positive definite at every k, zero included; shape (b,)."""
+        return eigenvalues_above(self.direct_from_zero(x), self.root_rho, 0.0)
 
     def apply(self, x: Array) -> tuple[Array, list[Array]]:
         """G(x), same shape as x, and the pivots of I - C(k) (see `oz.smallest_pivot`)."""

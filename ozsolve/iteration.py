@@ -59,10 +59,9 @@ def iterate(equations: Equations, x: Array, rule: StoppingRule, stepper: Anderso
     residuals: list[float] = []
     best = np.inf
     status = Status.MAX_STEPS
-    pivots: list[Array] = []
     with np.errstate(all="ignore"):
         for _ in range(rule.max_steps + 1):
-            image, pivots = equations.apply(x)
+            image, _ = equations.apply(x)
             residual = image - x
             norm = max(float(residual.max()), -float(residual.min()))
             residuals.append(norm)
@@ -77,7 +76,7 @@ def iterate(equations: Equations, x: Array, rule: StoppingRule, stepper: Anderso
                 status = Status.DIVERGED
                 break
             x = stepper.step(image, residual, history)
-        definite = status is not Status.NONFINITE and bool(smallest_pivot(pivots)[0] > 0.0)
+        definite = status is not Status.NONFINITE and bool(equations.definite(x)[0])
     return Outcome(x, status, residuals, definite, history.restarts)
 
 
@@ -89,7 +88,7 @@ class BatchOutcome:
     ----------
     x : ndarray, shape (b, size)
     solved, definite : ndarray of bool, shape (b,)
-        Converged; I - C(k) positive definite at every k.
+        Converged; I - C(k) positive definite at every grid point in k (k = 0 is left to the caller).
     steps : ndarray of int, shape (b,)
         Evaluations of the map until the state left.
     residuals : ndarray, shape (b,)

@@ -33,7 +33,6 @@ from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.solver import (
     COARSE_TOLERANCE_FACTOR,
     DEFAULT_ACCURACY,
-    ERROR_SHARE,
     REFINEMENT,
     RESIDUAL_GAIN,
     checked_accuracy,
@@ -43,7 +42,7 @@ from ozsolve.solver import (
     tail,
 )
 from ozsolve.stopping import Status, StoppingRule
-from ozsolve.thermodynamics import Observables, observe_many
+from ozsolve.thermodynamics import ERROR_SHARE, Observables, observe_many
 
 BATCH = 32
 """States in a batch: three pairs of 400 points and the accelerator's memory then fit the cache."""
@@ -291,7 +290,7 @@ def _accept(
     chosen = rows[kept]
     rough_equations = coarse if len(chosen) == len(batch) else coarse.take(chosen)
     x = second.x[kept]
-    stable = eigenvalues_above(sharp_equations.direct_k(x), sharp_equations.root_rho, NEAR_INSTABILITY)
+    stable = eigenvalues_above(sharp_equations.direct_from_zero(x), sharp_equations.root_rho, NEAR_INSTABILITY)
     sharp, rough = observe_many(sharp_equations, x), observe_many(rough_equations, first.x[chosen])
     tails = tail(sharp_equations, x)
     floors = RESIDUAL_GAIN * job.rule.tolerance + tails

@@ -170,7 +170,7 @@ def _on_first_branch(equations: Equations, x: Array) -> bool:
     Two solutions merge where the branch ends, and one eigenvalue of I - G' changes sign there. Far
     from instability (all eigenvalues of I - C(k) above `NEAR_INSTABILITY`) nothing is near.
     """
-    c_k = equations.direct_k(x)
+    c_k = equations.direct_from_zero(x)
     if eigenvalues_above(c_k, equations.root_rho, NEAR_INSTABILITY)[0]:
         return True
     return bool(eigenvalues_above(c_k, equations.root_rho, 0.0)[0]) and largest_real_eigenvalue(equations, x) < 1.0

@@ -18,6 +18,7 @@ from ozsolve.response import density_derivatives
 from ozsolve.root import bridge_function
 from ozsolve.stopping import Status
 from ozsolve.thermodynamics import (
+    ERROR_SHARE,
     Observables,
     concentration_fluctuations,
     g_segments,
@@ -191,9 +192,9 @@ class Solution:
 
     @cached_property
     def lowest_eigenvalue(self) -> float:
-        """Smallest eigenvalue of I - C(k) over all k; positive on the physical branch."""
+        """Smallest eigenvalue of I - C(k) over all k, zero included; positive on the physical branch."""
         equations = self.fine.equations
-        return float(lowest_eigenvalue(self._reduced_c_k[None], equations.root_rho)[0])
+        return float(lowest_eigenvalue(equations.direct_from_zero(self.fine.x), equations.root_rho)[0])
 
     # --- numbers ---------------------------------------------------------------------------------
 
@@ -276,7 +277,8 @@ class Solution:
             value = np.full_like(value, np.nan)
         bar = self.relative_error * np.abs(value)
         if self.coarse is not None:
-            bar = np.maximum(bar, 0.25 * np.abs(value - shell_integrals(self.coarse.equations, self.coarse.x, limit)))
+            rough = shell_integrals(self.coarse.equations, self.coarse.x, limit)
+            bar = np.maximum(bar, ERROR_SHARE * np.abs(value - rough))
         return self._table(value * self.length**3), self._table(bar * self.length**3)
 
     def running_shell_integral(self, radii: Array) -> Array:

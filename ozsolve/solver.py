@@ -19,11 +19,12 @@ from ozsolve.equations import Equations, Fluid, regrid
 from ozsolve.errors import InputError, NotConverged
 from ozsolve.grid import Grid, good_size
 from ozsolve.mixture import Mixture, State
+from ozsolve.oz import lowest_eigenvalue
 from ozsolve.potential import Array
 from ozsolve.root import Counters, Root, find_root
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.stopping import Status, StoppingRule
-from ozsolve.thermodynamics import Observables, observe
+from ozsolve.thermodynamics import ERROR_SHARE, Observables, observe
 
 FINEST_ACCURACY, COARSEST_ACCURACY = 1e-10, 1e-2
 DEFAULT_ACCURACY = 1e-5
@@ -33,11 +34,10 @@ ORDER = 5.0
 """Observed order of the error in the spacing; sets how the spacing follows the accuracy."""
 SPACING_LIMITS = (0.0025, 0.0625)
 REFINEMENT = 2
-ERROR_SHARE = 0.25
-"""Share of the coarse-fine difference that bounds the fine error: near order 2 in the spacing, the
-worst seen (a well edge that meets a kink of gamma); usually the error is far smaller."""
 EXTENT = 10.0
 """First extent, in the largest diameter, beyond the longest well."""
+TAIL_SHARE = 0.1
+"""Share of the accuracy that cutting correlations may cost before the extent doubles."""
 MAX_POINTS = 1 << 15
 MAX_REFINEMENTS = 4
 RESIDUAL_SHARE = 1e-3
@@ -148,7 +148,11 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     grid = first_grid(fluid, accuracy)
     rough_rule = StoppingRule(COARSE_TOLERANCE_FACTOR * tolerance)
     coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
-    while coarse.status is Status.SOLVED and _tail(coarse) > accuracy and 2 * grid.points <= MAX_POINTS // REFINEMENT:
+    while (
+        coarse.status is Status.SOLVED
+        and _tail(coarse) > TAIL_SHARE * accuracy
+        and 2 * grid.points <= MAX_POINTS // REFINEMENT
+    ):
         wider = Grid(grid.spacing, 2 * grid.points)
         coarse = _move(coarse, grid, wider, fluid, closure, rough_rule, stepper, counters)
         grid = wider
@@ -182,11 +186,15 @@ def tail(equations: Equations, x: Array) -> Array:
 
     The sine basis puts the mirror image of r h(r) behind the end. The image decays once more on its
     way back to the shell, so its effect is that of r h(r) at twice the extent, about the square of
-    the largest |r h(r)| in the last tenth. Shape (b,) for x of shape (b, size).
+    the largest |r h(r)| in the last tenth; close to instability the response to it grows as the
+    inverse of the lowest eigenvalue of I - C(0). Factors by trial (extents of 6 against 25, liquids
+    and near-critical fluids). Shape (b,) for x of shape (b, size).
     """
     tail_start = int(0.9 * equations.shape[2])
     rh = x.reshape(equations.shape)[:, :, tail_start:]
-    return np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2)
+    lowest = lowest_eigenvalue(equations.direct_zero(x)[:, :, None], equations.root_rho)
+    response = 0.25 + 5.0 / np.maximum(lowest, 1e-6)
+    return np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2 * response)
 
 
 def _move(
