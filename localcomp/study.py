@@ -289,7 +289,7 @@ def temperature_unit(mixture: Mixture, reference: str) -> float:
 def _closures(table: Table) -> tuple[str, ...]:
     raw = table.content.get("closures", ["rhnc"])
     names = [raw] if isinstance(raw, str) else raw
-    if not isinstance(names, list) or not names or any(n not in CLOSURES for n in names):
+    if not isinstance(names, list) or not names or any(not isinstance(n, str) or n not in CLOSURES for n in names):
         table.complain("closures", raw, f"a list out of: {', '.join(CLOSURES)}")
         return ("rhnc",)
     return tuple(dict.fromkeys(names))

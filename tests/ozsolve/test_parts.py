@@ -153,7 +153,7 @@ def test_scipy_reaches_the_same_root() -> None:
 def test_picard_reaches_the_same_root() -> None:
     system, x = equations("unlike", "msa", 192)
     truth = iterate(system, x, RULE, Anderson()).x
-    for _ in range(400):
+    for _ in range(1500):
         x = x + 0.6 * (system.apply(x)[0] - x)
     assert np.max(np.abs(x - truth)) < 1e-6
 
