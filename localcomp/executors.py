@@ -87,6 +87,6 @@ def cluster(address: str) -> Iterator[Executor]:
             [Problem("command line", "--cluster", address, f"no scheduler answers there ({error})")]
         ) from None
     try:
-        yield client.get_executor(pure=False, retries=5)  # type: ignore[no-untyped-call]
+        yield client.get_executor(pure=False, retries=5)
     finally:
-        client.close()  # type: ignore[no-untyped-call]
+        client.close()
