@@ -70,10 +70,10 @@ def read_state(path: str | Path) -> StateFile:
     for needed in ("mixture", "state"):
         if needed not in content:
             top.missing(f"[{needed}]", f"a [{needed}] table is needed")
-    units = _units(Table(str(path), "units", content.get("units", {}), problems))
-    rule = _shell(Table(str(path), "shell", content.get("shell", {}), problems))
-    accuracy = _accuracy(Table(str(path), "numerics", content.get("numerics", {}), problems))
-    mixture = _mixture(Table(str(path), "mixture", content["mixture"], problems)) if "mixture" in content else None
+    units = read_units(Table(str(path), "units", content.get("units", {}), problems))
+    rule = read_shell(Table(str(path), "shell", content.get("shell", {}), problems))
+    accuracy = read_accuracy(Table(str(path), "numerics", content.get("numerics", {}), problems))
+    mixture = read_mixture(Table(str(path), "mixture", content["mixture"], problems)) if "mixture" in content else None
     result = None
     if "state" in content:
         table = Table(str(path), "state", content["state"], problems)
@@ -84,12 +84,14 @@ def read_state(path: str | Path) -> StateFile:
     return StateFile(path, units, mixture, state, closure, accuracy, rule)
 
 
-def _units(table: Table) -> Units:
+def read_units(table: Table) -> Units:
+    """The [units] table."""
     table.known(("length", "energy"))
     return Units(table.word("length", LENGTH_UNITS, "reduced"), table.word("energy", ENERGY_UNITS, "reduced"))
 
 
-def _shell(table: Table) -> ShellRule:
+def read_shell(table: Table) -> ShellRule:
+    """The [shell] table."""
     table.known(("rule", "multiple"))
     name = table.word("rule", RULES, "well_edge")
     multiple = table.number(
@@ -100,7 +102,8 @@ def _shell(table: Table) -> ShellRule:
     return make_rule(name, multiple or 1.5)
 
 
-def _accuracy(table: Table) -> float:
+def read_accuracy(table: Table) -> float:
+    """The [numerics] table."""
     table.known(("accuracy",))
     value = table.number(
         "accuracy",
@@ -111,7 +114,8 @@ def _accuracy(table: Table) -> float:
     return value if value is not None else DEFAULT_ACCURACY
 
 
-def _mixture(table: Table) -> Mixture | None:
+def read_mixture(table: Table) -> Mixture | None:
+    """A mixture's table; None after a complaint."""
     before = len(table.problems)
     table.known(MIXTURE_KEYS)
     diameter = table.numbers("diameter", "a list of positive numbers, one per species", positive, size=None)

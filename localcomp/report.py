@@ -203,7 +203,7 @@ def _numbers(report: StateReport) -> dict[str, Any]:
             "local_mole_fractions": found.fraction_errors,
             "neighbor_ratios": found.ratio_errors,
             "contact_values": errors.contact,
-            "internal_energy": units.energy_out(errors.energy * temperature),
+            "internal_energy": units.energy_out(float(errors.energy) * temperature),
             "compressibility_factor": {"virial": errors.virial},
             "inverse_compressibility": errors.inverse_compressibility,
         },

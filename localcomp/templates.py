@@ -53,3 +53,37 @@ well_range = 1.5               # chosen; the other two parameters follow from it
 closure = "rhnc"
 source = "saturated liquid, reference equation of state of Tegeler, Span and Wagner (1999)"
 """
+
+STUDY_TOML = """\
+# A class of binary mixtures: every combination of the lists below is one state to solve.
+#   localcomp check study.toml                how many states, how long, mistakes in this file
+#   localcomp sweep study.toml --out results  solve them; interrupted runs resume
+#   localcomp table results                   CSV and a summary
+# A list may be a range: { from = 1.0, to = 2.0, steps = 5 }.
+
+[study]
+name = "size and energy asymmetry"
+
+[class]                                  # species 1 has sigma = eps = 1; these describe species 2
+size_ratio = [1.0, 1.25, 1.5]            # sigma_2/sigma_1
+energy_ratio = [1.0, 1.5, 2.0]           # eps_2/eps_1
+k = [0.0, 0.1]                           # eps_12 = (1 - k) sqrt(eps_1 eps_2)
+well_range = 1.5
+
+# Instead of [class]: one [pair] (names, diameter, well_depth, ... as in a state file; k may be a
+# list), or any number of [[mixtures]] with two or more species and mole_fractions below.
+
+[conditions]
+temperature = { from = 1.5, to = 3.0, steps = 4 }
+temperature_reference = "mean"           # T* = kT over: mean (of eps_1, eps_2), first, second, absolute
+packing_fraction = 0.40
+composition = [0.0, 0.1, 0.3, 0.5, 0.7, 0.9, 1.0]   # x_1; 0 and 1 are infinite dilution
+# mole_fractions = [[0.2, 0.3, 0.5]]     # for more than two species
+closures = ["rhnc"]                      # rhnc, hnc, py, msa
+
+[shell]
+rule = "well_edge"
+
+[numerics]
+accuracy = 1e-5
+"""

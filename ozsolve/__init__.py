@@ -6,6 +6,7 @@ gives radial distribution functions, neighbour counts and thermodynamics with er
 
 from ozsolve.closures import CLOSURES, HNC, MSA, PY, RHNC, Closure, get_closure
 from ozsolve.errors import InputError, NotConverged, OzsolveError
+from ozsolve.many import solve_many
 from ozsolve.mixture import Mixture, State
 from ozsolve.potential import PairOverride, PairTable
 from ozsolve.solution import Solution, Stats
@@ -32,4 +33,5 @@ __all__ = [
     "Status",
     "get_closure",
     "solve",
+    "solve_many",
 ]

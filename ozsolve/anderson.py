@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg.lapack import dposv
 
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Indices
 
 RIDGE = 1e-14
 """Relative ridge on the small normal matrix: below the squared round-off of its entries."""
@@ -30,10 +30,37 @@ class History:
     filled: int = 0
     restarts: int = 0
 
-    def keep(self, rows: Array) -> None:
+    def keep(self, rows: Indices) -> None:
         """Drop the states of the batch that are not listed."""
         for name in ("d_residual", "d_image", "gram", "residual", "image"):
             setattr(self, name, getattr(self, name)[rows])
+
+
+class Recycled:
+    """Secant pairs of a neighbouring state, put in front of the map as a fixed preconditioner.
+
+    The neighbour's differences say how its map acts on the directions that converge slowly; those
+    directions are much the same here. x + f is replaced by x + f - dG theta with theta fitted to f by
+    the neighbour's dF: Anderson's own step with a frozen memory.
+
+    Parameters
+    ----------
+    d_residual, d_image : ndarray, shape (depth, size)
+    """
+
+    def __init__(self, d_residual: Array, d_image: Array) -> None:
+        left, singular, right = np.linalg.svd(d_residual, full_matrices=False)
+        keep = singular > RECYCLED_CUT * singular[0]
+        self._directions = np.ascontiguousarray(right[keep].T)
+        self._images = (left[:, keep] / singular[keep]).T @ d_image
+
+    def correct(self, image: Array, residual: Array) -> Array:
+        """The preconditioned image for a batch, shape (b, size)."""
+        return np.asarray(image - (residual @ self._directions) @ self._images)
+
+
+RECYCLED_CUT = 1e-7
+"""Directions seen only below this share of the largest difference are noise."""
 
 
 @dataclass(frozen=True)
@@ -97,6 +124,7 @@ def _solve_small(gram: Array, target: Array) -> Array | None:
         _, theta, info = dposv(gram[0], target[0])
         return theta[None] if info == 0 else None
     try:
-        return np.asarray(np.linalg.solve(gram, target), dtype=np.float64)
+        safe = gram + np.finfo(np.float64).tiny * np.eye(gram.shape[-1])  # a finished state may stand still
+        return np.asarray(np.linalg.solve(safe, target), dtype=np.float64)
     except np.linalg.LinAlgError:
         return None

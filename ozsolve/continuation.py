@@ -23,6 +23,8 @@ from ozsolve.stopping import Status, StoppingRule
 STABILITY_FLOOR = 0.02
 """Lowest eigenvalue of I - C below which a branch that ends is said to end at the stability limit."""
 
+NO_JUMP = 1e-3
+"""Change of r gamma (smallest diameter) that no jump between roots is smaller than, a branch end apart."""
 STALLED = 50
 """A path out of rungs whose step has shrunk to this many shortest steps is at the end of its branch."""
 
@@ -127,11 +129,13 @@ def _correct(equations: Equations, guess: Array, rule: StoppingRule, stepper: An
 
 
 def _continuous(found: Array, guess: Array, before: Array, bend: float) -> bool:
-    """Whether the rung lies where the rungs before it point: |found - guess| <= bend |found - before|."""
-    return float(np.abs(found - guess).max()) <= bend * float(np.abs(found - before).max())
+    """Whether the rung lies where the rungs before it point: |found - guess| <= bend |found - before|,
+    a change too small to be a jump (`NO_JUMP`) aside."""
+    off, moved = float(np.abs(found - guess).max()), float(np.abs(found - before).max())
+    return off <= max(bend * moved, NO_JUMP)
 
 
 def _name_the_end(equations_at: Callable[[float], Equations], path: Path) -> Status:
     equations = equations_at(path.reached)
-    lowest = float(lowest_eigenvalue(equations.direct_k(path.x), equations.root_rho)[0])
+    lowest = float(lowest_eigenvalue(equations.direct_from_zero(path.x), equations.root_rho)[0])
     return Status.UNSTABLE_FLUID if lowest < STABILITY_FLOOR else Status.BRANCH_END

@@ -8,6 +8,7 @@ densities in its inverse cube, energies in kT.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -15,8 +16,8 @@ import numpy as np
 
 from ozsolve.closures import BoundClosure, Closure
 from ozsolve.grid import Grid, step_weights
-from ozsolve.oz import indirect, indirect_response, pair_index
-from ozsolve.potential import Array
+from ozsolve.oz import eigenvalues_above, indirect, indirect_response, pair_index
+from ozsolve.potential import Array, Flags, Indices
 from ozsolve.transform import plan
 
 
@@ -59,33 +60,50 @@ class Equations:
         self.fluid = fluid
         self.grid = grid
         self.closure = closure
-        batch, pairs = fluid.core.shape
-        self.shape = (batch, pairs, grid.points - 1)
-        self.transform = plan(grid.spacing, grid.points, batch * pairs)
         self.root_rho = np.sqrt(fluid.rho)
         inside_core = self._indicator(fluid.core)
         inside_edge = self._indicator(fluid.edge)
         self.well = inside_edge - inside_core
         self.outside = 1.0 - inside_edge
         self.bridge = np.zeros((1, 1, 1)) if bridge is None else bridge
+        self._finish()
+
+    def _finish(self) -> None:
+        """What follows from fluid, grid, closure, weights and bridge."""
+        fluid, grid, closure = self.fluid, self.grid, self.closure
+        batch, pairs = fluid.core.shape
+        self.shape = (batch, pairs, grid.points - 1)
+        self.transform = plan(grid.spacing, grid.points, batch * pairs)
         self.bound: BoundClosure = closure.bind(
             fluid.attraction[:, :, None], self.bridge, self.well * grid.r, self.outside * grid.r
         )
         self._inverse_r = 1.0 / grid.r
         self._input = self.transform.input.reshape(self.shape)
 
+    def take(self, rows: Indices) -> Equations:
+        """The same equations for some states of the batch (integer index)."""
+        fluid = self.fluid
+        part = object.__new__(Equations)
+        part.fluid = Fluid(fluid.rho[rows], fluid.core[rows], fluid.edge[rows], fluid.attraction[rows])
+        part.grid, part.closure = self.grid, self.closure
+        part.root_rho = self.root_rho[rows]
+        part.well, part.outside = self.well[rows], self.outside[rows]
+        part.bridge = self.bridge if len(self.bridge) == 1 else self.bridge[rows]
+        part._finish()
+        return part
+
     def _indicator(self, edges: Array) -> Array:
         grid = self.grid
         rows = [step_weights(float(edge), grid.spacing, grid.points) for edge in edges.ravel()]
-        return np.array(rows).reshape(self.shape)
+        return np.array(rows).reshape(*edges.shape, -1)
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""
         return np.asarray(np.multiply(x.reshape(self.shape), self._inverse_r))
 
     def pair_table(self, pairs: Array) -> Array:
-        """A symmetric (s, s) table from values per pair i <= j."""
-        return np.asarray(pairs[np.array(pair_index(self.fluid.rho.shape[-1]))])
+        """Symmetric (..., s, s) tables from values (..., pairs), i <= j."""
+        return np.asarray(pairs[..., np.array(pair_index(self.fluid.rho.shape[-1]))])
 
     def direct_r(self, x: Array) -> Array:
         """r times the segment-weighted c(r), shape (b, pairs, m)."""
@@ -99,6 +117,21 @@ class Equations:
         rc_r -= x
         np.subtract(rc_r, self.grid.r, out=self._input)
         return self.transform.forward().reshape(self.shape)
+
+    def direct_zero(self, x: Array) -> Array:
+        """c(k = 0) = 4 pi int c r^2 dr, shape (b, pairs)."""
+        return np.asarray(4.0 * math.pi * self.grid.spacing * (self.direct_r(x) @ self.grid.r))
+
+    def direct_from_zero(self, x: Array) -> Array:
+        """c(k) with k = 0 in front, shape (b, pairs, m + 1).
+
+        Stability is lost at k = 0 first, which the sine transform's own points leave out.
+        """
+        return np.concatenate((self.direct_zero(x)[:, :, None], self.direct_k(x)), axis=-1)
+
+    def definite(self, x: Array) -> Flags:
+        """Whether I - C(k) is positive definite at every k, zero included; shape (b,)."""
+        return eigenvalues_above(self.direct_from_zero(x), self.root_rho, 0.0)
 
     def apply(self, x: Array) -> tuple[Array, list[Array]]:
         """G(x), same shape as x, and the pivots of I - C(k) (see `oz.smallest_pivot`)."""

@@ -34,7 +34,7 @@ def newton(equations: Equations, x: Array, rule: StoppingRule) -> Outcome:
             if not np.isfinite(norm):
                 return Outcome(x, Status.NONFINITE, residuals, False)
             if norm < rule.tolerance:
-                return Outcome(image, Status.SOLVED, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
+                return Outcome(image, Status.SOLVED, residuals, bool(equations.definite(image)[0]))
             direction = solve_linear(equations, x, residual, FORCING)
             length = float(np.linalg.norm(residual))
             size = 1.0

@@ -17,7 +17,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Flags
 
 
 @lru_cache(maxsize=16)
@@ -43,8 +43,8 @@ def pack(table: Array) -> Array:
     return table[..., i, j]
 
 
-def factorise(c_k: Array, root_rho: Array) -> tuple[list[list[Array]], list[Array]]:
-    """L (strictly lower, as rows) and pivots d of I - C(k).
+def factorise(c_k: Array, root_rho: Array, shift: float = 0.0) -> tuple[list[list[Array]], list[Array]]:
+    """L (strictly lower, as rows) and pivots d of (1 - shift) I - C(k).
 
     Parameters
     ----------
@@ -62,7 +62,7 @@ def factorise(c_k: Array, root_rho: Array) -> tuple[list[list[Array]], list[Arra
             scale = (root_rho[:, i] * root_rho[:, j])[:, None]
             entry = -scale * c_k[:, pair[i][j]]
             if i == j:
-                entry += 1.0
+                entry += 1.0 - shift
             for m in range(j):
                 entry -= row[m] * (lower[j][m] * pivots[m] if j < i else row[m] * pivots[m])
             if j < i:
@@ -176,6 +176,15 @@ def sum_products(terms: list[tuple[Array, Array]]) -> Array:
     for a, b in rest:
         total += a * b
     return total
+
+
+def eigenvalues_above(c_k: Array, root_rho: Array, bound: float) -> Flags:
+    """Whether every eigenvalue of I - C(k) exceeds the bound at every k; shape (b,), bool.
+
+    By Cholesky: I - C - bound I is positive definite exactly then.
+    """
+    _, pivots = factorise(c_k, root_rho, bound)
+    return np.asarray(smallest_pivot(pivots) > 0.0)
 
 
 def lowest_eigenvalue(c_k: Array, root_rho: Array) -> Array:

@@ -14,6 +14,8 @@ from numpy.typing import ArrayLike, NDArray
 from ozsolve.errors import InputError
 
 Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
+Flags = NDArray[np.bool_]
 
 ARITHMETIC_RULE = "sigma_ij = (1 - l_ij) (sigma_i + sigma_j)/2"
 GEOMETRIC_RULE = "eps_ij = (1 - k_ij) sqrt(eps_i eps_j)"

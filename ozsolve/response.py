@@ -86,4 +86,4 @@ def density_derivatives(equations: Equations, x: Array, reference: Array) -> tup
     response = Response(equations, x, reference, lambda t: fluid.scaled(density=1.0 + t))
     forward, backward = response.ends()
     inverse = ((1.0 + STEP) * forward.virial - (1.0 - STEP) * backward.virial) / (2.0 * STEP)
-    return inverse, (forward.energy - backward.energy) / (2.0 * STEP)
+    return float(inverse), float((forward.energy - backward.energy) / (2.0 * STEP))

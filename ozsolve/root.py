@@ -19,7 +19,7 @@ from ozsolve.equations import Equations, Fluid
 from ozsolve.grid import Grid
 from ozsolve.iteration import Outcome, iterate
 from ozsolve.newton import largest_real_eigenvalue
-from ozsolve.oz import lowest_eigenvalue
+from ozsolve.oz import eigenvalues_above
 from ozsolve.potential import Array
 from ozsolve.stopping import Status, StoppingRule
 
@@ -170,10 +170,10 @@ def _on_first_branch(equations: Equations, x: Array) -> bool:
     Two solutions merge where the branch ends, and one eigenvalue of I - G' changes sign there. Far
     from instability (all eigenvalues of I - C(k) above `NEAR_INSTABILITY`) nothing is near.
     """
-    lowest = float(lowest_eigenvalue(equations.direct_k(x), equations.root_rho)[0])
-    if lowest <= 0.0:
-        return False
-    return lowest > NEAR_INSTABILITY or largest_real_eigenvalue(equations, x) < 1.0
+    c_k = equations.direct_from_zero(x)
+    if eigenvalues_above(c_k, equations.root_rho, NEAR_INSTABILITY)[0]:
+        return True
+    return bool(eigenvalues_above(c_k, equations.root_rho, 0.0)[0]) and largest_real_eigenvalue(equations, x) < 1.0
 
 
 def _sure(equations: Equations, reference: Array, rule: StoppingRule, stepper: Anderson, counters: Counters) -> Root:

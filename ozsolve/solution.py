@@ -7,15 +7,18 @@ from functools import cached_property
 
 import numpy as np
 
-from ozsolve.closures import Closure
+from ozsolve.closures import PY, Closure
 from ozsolve.continuation import Rung
 from ozsolve.equations import Equations, Fluid
+from ozsolve.grid import Grid
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import lowest_eigenvalue, unpack
 from ozsolve.potential import Array
 from ozsolve.response import density_derivatives
+from ozsolve.root import bridge_function
 from ozsolve.stopping import Status
 from ozsolve.thermodynamics import (
+    ERROR_SHARE,
     Observables,
     concentration_fluctuations,
     g_segments,
@@ -61,11 +64,39 @@ class Stats:
 
 @dataclass(frozen=True)
 class LevelResult:
-    """One grid's fixed point: what is needed to evaluate anything on that grid."""
+    """One grid's fixed point: all that is needed to evaluate anything on that grid.
 
-    equations: Equations
+    Attributes
+    ----------
+    fluid : Fluid
+        Batch of one.
+    grid : Grid
+    closure : Closure
+    x, reference : ndarray, shape (1, size)
+        r gamma of the state and of its Percus-Yevick hard-sphere reference.
+    """
+
+    fluid: Fluid
+    grid: Grid
+    closure: Closure
     x: Array
     reference: Array
+
+    @cached_property
+    def equations(self) -> Equations:
+        """Built on first use, so that many solutions can be kept in little memory."""
+        bridge = None
+        if self.closure.needs_reference:
+            hard = Equations(self.fluid.scaled(attraction=0.0), self.grid, PY)
+            bridge = bridge_function(self.reference, hard)
+        return Equations(self.fluid, self.grid, self.closure, bridge)
+
+    @classmethod
+    def of(cls, equations: Equations, x: Array, reference: Array) -> LevelResult:
+        """From equations already built."""
+        level = cls(equations.fluid, equations.grid, equations.closure, x, reference)
+        level.__dict__["equations"] = equations
+        return level
 
 
 @dataclass(frozen=True, repr=False)
@@ -161,9 +192,9 @@ class Solution:
 
     @cached_property
     def lowest_eigenvalue(self) -> float:
-        """Smallest eigenvalue of I - C(k) over all k; positive on the physical branch."""
+        """Smallest eigenvalue of I - C(k) over all k, zero included; positive on the physical branch."""
         equations = self.fine.equations
-        return float(lowest_eigenvalue(self._reduced_c_k[None], equations.root_rho)[0])
+        return float(lowest_eigenvalue(equations.direct_from_zero(self.fine.x), equations.root_rho)[0])
 
     # --- numbers ---------------------------------------------------------------------------------
 
@@ -185,17 +216,17 @@ class Solution:
     @property
     def internal_energy(self) -> float:
         """U/N in the energy unit: -1/2 sum_ij x_i N_ij eps_ij."""
-        return self.observables.energy * self.state.temperature
+        return float(self.observables.energy) * self.state.temperature
 
     @property
     def virial_z(self) -> float:
         """Z = P/(rho kT), virial route."""
-        return self.observables.virial
+        return float(self.observables.virial)
 
     @property
     def inverse_compressibility(self) -> float:
         """1/(rho kT kappa_T) = 1 - sum_ij x_i x_j rho c_ij(0), compressibility route."""
-        return self.observables.inverse_compressibility
+        return float(self.observables.inverse_compressibility)
 
     @cached_property
     def _density_derivatives(self) -> tuple[float, float]:
@@ -246,7 +277,8 @@ class Solution:
             value = np.full_like(value, np.nan)
         bar = self.relative_error * np.abs(value)
         if self.coarse is not None:
-            bar = np.maximum(bar, 0.25 * np.abs(value - shell_integrals(self.coarse.equations, self.coarse.x, limit)))
+            rough = shell_integrals(self.coarse.equations, self.coarse.x, limit)
+            bar = np.maximum(bar, ERROR_SHARE * np.abs(value - rough))
         return self._table(value * self.length**3), self._table(bar * self.length**3)
 
     def running_shell_integral(self, radii: Array) -> Array:

@@ -15,28 +15,29 @@ import numpy as np
 
 from ozsolve.anderson import Anderson
 from ozsolve.closures import RHNC, Closure, get_closure
-from ozsolve.equations import Fluid, regrid
+from ozsolve.equations import Equations, Fluid, regrid
 from ozsolve.errors import InputError, NotConverged
 from ozsolve.grid import Grid, good_size
 from ozsolve.mixture import Mixture, State
+from ozsolve.oz import lowest_eigenvalue
+from ozsolve.potential import Array
 from ozsolve.root import Counters, Root, find_root
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.stopping import Status, StoppingRule
-from ozsolve.thermodynamics import Observables, observe
+from ozsolve.thermodynamics import ERROR_SHARE, Observables, observe
 
 FINEST_ACCURACY, COARSEST_ACCURACY = 1e-10, 1e-2
 DEFAULT_ACCURACY = 1e-5
-REFERENCE_SPACING = 0.04
+REFERENCE_SPACING = 0.03
 """Fine spacing (smallest diameters) that serves the default accuracy; by trial on 200 liquids."""
 ORDER = 5.0
 """Observed order of the error in the spacing; sets how the spacing follows the accuracy."""
 SPACING_LIMITS = (0.0025, 0.0625)
 REFINEMENT = 2
-ERROR_SHARE = 0.25
-"""Share of the coarse-fine difference that bounds the fine error: near order 2 in the spacing, the
-worst seen (a well edge that meets a kink of gamma); usually the error is far smaller."""
 EXTENT = 10.0
 """First extent, in the largest diameter, beyond the longest well."""
+TAIL_SHARE = 0.1
+"""Share of the accuracy that cutting correlations may cost before the extent doubles."""
 MAX_POINTS = 1 << 15
 MAX_REFINEMENTS = 4
 RESIDUAL_SHARE = 1e-3
@@ -91,7 +92,7 @@ def solve(
     chosen = get_closure(closure)
     if on_failure not in ("raise", "return"):
         raise InputError("on_failure", on_failure, "one of: raise, return")
-    accuracy = _checked_accuracy(accuracy)
+    accuracy = checked_accuracy(accuracy)
     began = time.perf_counter()
     fluid, length = reduced_fluid(mixture, state)
     ladder = _climb(fluid, chosen, accuracy)
@@ -101,7 +102,13 @@ def solve(
     return solution
 
 
-def _checked_accuracy(accuracy: float) -> float:
+def residual_tolerance(accuracy: float) -> float:
+    """Residual at which a solve stops, for the accuracy asked."""
+    return max(RESIDUAL_SHARE * accuracy, SMALLEST_TOLERANCE)
+
+
+def checked_accuracy(accuracy: float) -> float:
+    """The accuracy as a number within the limits, or an `InputError`."""
     try:
         value = float(accuracy)
     except (TypeError, ValueError):
@@ -134,14 +141,18 @@ def first_grid(fluid: Fluid, accuracy: float) -> Grid:
 
 def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     stepper = Anderson()
-    tolerance = max(RESIDUAL_SHARE * accuracy, SMALLEST_TOLERANCE)
+    tolerance = residual_tolerance(accuracy)
     rule = StoppingRule(tolerance)
     counters = Counters()
     species = fluid.rho.shape[1]
     grid = first_grid(fluid, accuracy)
-    rough_rule = StoppingRule(max(COARSE_TOLERANCE_FACTOR * tolerance, SMALLEST_TOLERANCE))
+    rough_rule = StoppingRule(COARSE_TOLERANCE_FACTOR * tolerance)
     coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
-    while coarse.status is Status.SOLVED and _tail(coarse) > accuracy and 2 * grid.points <= MAX_POINTS // REFINEMENT:
+    while (
+        coarse.status is Status.SOLVED
+        and _tail(coarse) > TAIL_SHARE * accuracy
+        and 2 * grid.points <= MAX_POINTS // REFINEMENT
+    ):
         wider = Grid(grid.spacing, 2 * grid.points)
         coarse = _move(coarse, grid, wider, fluid, closure, rough_rule, stepper, counters)
         grid = wider
@@ -156,7 +167,7 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
             return _Ladder(fine.status, fine, None, missing, missing, np.nan, counters)
         sharp = observe(fine.equations, fine.x)
         floor = RESIDUAL_GAIN * tolerance + _tail(fine)
-        roughness = ERROR_SHARE * sharp.roughness(rough)
+        roughness = ERROR_SHARE * float(sharp.roughness(rough))
         reached = roughness + floor <= accuracy
         last = level == MAX_REFINEMENTS - 1 or finer.points * REFINEMENT > MAX_POINTS
         if reached or last:
@@ -167,16 +178,23 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
 
 
 def _tail(root: Root) -> float:
+    return float(tail(root.equations, root.x)[0])
+
+
+def tail(equations: Equations, x: Array) -> Array:
     """Relative effect of cutting correlations at the extent.
 
     The sine basis puts the mirror image of r h(r) behind the end. The image decays once more on its
     way back to the shell, so its effect is that of r h(r) at twice the extent, about the square of
-    the largest |r h(r)| in the last tenth.
+    the largest |r h(r)| in the last tenth; close to instability the response to it grows as the
+    inverse of the lowest eigenvalue of I - C(0). Factors by trial (extents of 6 against 25, liquids
+    and near-critical fluids). Shape (b,) for x of shape (b, size).
     """
-    equations = root.equations
     tail_start = int(0.9 * equations.shape[2])
-    rh = root.x.reshape(equations.shape)[:, :, tail_start:]
-    return float(np.abs(rh).max()) ** 2
+    rh = x.reshape(equations.shape)[:, :, tail_start:]
+    lowest = lowest_eigenvalue(equations.direct_zero(x)[:, :, None], equations.root_rho)
+    response = 0.25 + 5.0 / np.maximum(lowest, 1e-6)
+    return np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2 * response)
 
 
 def _move(
@@ -234,8 +252,8 @@ def _assemble(
         length=length,
         observables=ladder.observables,
         errors=ladder.errors,
-        fine=LevelResult(fine.equations, fine.x, fine.reference),
-        coarse=None if coarse is None else LevelResult(coarse.equations, coarse.x, coarse.reference),
+        fine=LevelResult.of(fine.equations, fine.x, fine.reference),
+        coarse=None if coarse is None else LevelResult.of(coarse.equations, coarse.x, coarse.reference),
         relative_error=ladder.relative_error,
         residuals=tuple(fine.residuals),
         stats=stats,

@@ -52,7 +52,7 @@ class RadialTransform:
         return np.array(self._out)
 
 
-@lru_cache(maxsize=32)
+@lru_cache(maxsize=64)
 def plan(spacing: float, points: int, rows: int) -> RadialTransform:
     """The transform for this grid and stack height, made once and kept."""
     return RadialTransform(spacing, points, rows)

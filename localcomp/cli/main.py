@@ -10,8 +10,8 @@ from typing import Annotated
 import typer
 
 from localcomp import __version__
-from localcomp.cli import calibrate_command, new_command, state_command
-from localcomp.errors import BadInput, NoAnswer
+from localcomp.cli import calibrate_command, new_command, state_command, study_command
+from localcomp.errors import BadInput, LocalcompError, NoAnswer
 
 WRONG_INPUT = 2
 NO_SOLUTION = 3
@@ -44,6 +44,9 @@ def _root(
 app.command("new")(new_command.new)
 app.command("state")(state_command.state)
 app.command("calibrate")(calibrate_command.calibrate)
+app.command("check")(study_command.check)
+app.command("sweep")(study_command.sweep)
+app.command("table")(study_command.table)
 
 
 def run() -> None:
@@ -59,6 +62,9 @@ def run() -> None:
     except NoAnswer as error:
         typer.echo(f"no answer: {error}", err=True)
         sys.exit(NO_SOLUTION)
+    except LocalcompError as error:
+        typer.echo(f"error: {error}", err=True)
+        sys.exit(1)
     except KeyboardInterrupt:
         typer.echo("interrupted", err=True)
         sys.exit(INTERRUPTED)

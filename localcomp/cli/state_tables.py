@@ -160,9 +160,9 @@ def _thermodynamics(out: Console, report: StateReport) -> None:
     errors = solution.errors
     made = table("\nThermodynamics", "quantity", "value", "route or unit")
     energy = units.energy_out(solution.internal_energy)
-    bar = units.energy_out(errors.energy * report.request.state.temperature)
+    bar = units.energy_out(float(errors.energy) * report.request.state.temperature)
     made.add_row("residual energy U/N", with_error(energy, bar), units.energy_label)
-    made.add_row("Z = P/(rho kT)", with_error(solution.virial_z, errors.virial), "virial")
+    made.add_row("Z = P/(rho kT)", with_error(solution.virial_z, float(errors.virial)), "virial")
     if report.route is not None:
         made.add_row("Z = P/(rho kT)", f"{report.route.z:.4f}", "energy")
         made.add_row("  gap between these routes", f"{solution.virial_z - report.route.z:+.4f}", "virial - energy")
@@ -170,7 +170,7 @@ def _thermodynamics(out: Console, report: StateReport) -> None:
         pressure = pressure_mpa(report, z) if z is not None else None
         if pressure is not None:
             made.add_row("pressure", f"{pressure:.4g}", f"MPa, {label}")
-    inverse = with_error(solution.inverse_compressibility, errors.inverse_compressibility)
+    inverse = with_error(solution.inverse_compressibility, float(errors.inverse_compressibility))
     made.add_row("1/(rho kT kappa_T)", inverse, "compressibility")
     made.add_row("1/(rho kT kappa_T)", f"{solution.virial_inverse_compressibility:.4f}", "virial")
     made.add_row("  gap between these routes", f"{solution.route_gap:+.4f}", "virial - compressibility")

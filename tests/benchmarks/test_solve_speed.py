@@ -14,6 +14,8 @@ from collections.abc import Callable
 
 import numpy as np
 import pytest
+from scipy.optimize import newton_krylov
+
 from ozsolve import CLOSURES, Mixture, State, solve
 from ozsolve.closures import MSA, PY, get_closure
 from ozsolve.equations import Equations
@@ -22,7 +24,6 @@ from ozsolve.root import bridge_function
 from ozsolve.solution import reduced_fluid
 from ozsolve.solver import RESIDUAL_SHARE
 from ozsolve.transform import plan
-from scipy.optimize import newton_krylov
 
 MIXTURE = Mixture([1.0, 1.5], [1.0, 1.5], k=0.1)
 STATE = State(2.0, (0.5, 0.5), packing_fraction=0.40)

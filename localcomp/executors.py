@@ -1,0 +1,92 @@
+"""Where work runs: this process, a pool over the machine's cores, or a Dask cluster."""
+
+from __future__ import annotations
+
+import os
+import threading
+import time
+from collections.abc import Iterator
+from concurrent.futures import Executor, Future, ProcessPoolExecutor
+from contextlib import contextmanager
+from multiprocessing import get_context
+from typing import Any
+
+from localcomp.errors import BadInput, Problem
+
+SINGLE_THREAD = ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS", "VECLIB_MAXIMUM_THREADS")
+CONNECT_SECONDS = 20
+
+
+class SerialExecutor(Executor):
+    """Runs each task at once in this process; for one worker and for tests."""
+
+    def submit(self, fn: Any, /, *args: Any, **kwargs: Any) -> Future[Any]:
+        """Run now; the future is done when it returns."""
+        future: Future[Any] = Future()
+        try:
+            future.set_result(fn(*args, **kwargs))
+        except Exception as error:  # a future carries its error to whoever asks for the result
+            future.set_exception(error)
+        return future
+
+
+@contextmanager
+def pool(workers: int) -> Iterator[Executor]:
+    """A process pool with single-threaded linear algebra; workers die with their parent."""
+    before = {name: os.environ.get(name) for name in SINGLE_THREAD}
+    os.environ.update(dict.fromkeys(SINGLE_THREAD, "1"))
+    try:
+        executor = ProcessPoolExecutor(
+            workers, mp_context=get_context("spawn"), initializer=_die_with_parent, initargs=(os.getpid(),)
+        )
+        try:
+            yield executor
+        finally:
+            executor.shutdown(wait=True, cancel_futures=True)
+    finally:
+        for name, value in before.items():
+            if value is None:
+                os.environ.pop(name, None)
+            else:
+                os.environ[name] = value
+
+
+def _die_with_parent(parent: int) -> None:
+    """Leave when the process that started this worker is gone (killed, say): nobody waits for the result."""
+    import signal
+
+    signal.signal(signal.SIGINT, signal.SIG_IGN)  # the parent decides what Ctrl-C means
+
+    def watch() -> None:
+        while os.getppid() == parent:
+            time.sleep(0.5)
+        os._exit(1)
+
+    threading.Thread(target=watch, daemon=True).start()
+
+
+@contextmanager
+def cluster(address: str) -> Iterator[Executor]:
+    """The workers of a running Dask scheduler.
+
+    Raises
+    ------
+    BadInput
+        If `distributed` is not installed or the scheduler does not answer.
+    """
+    try:
+        from distributed import Client
+    except ImportError:
+        raise BadInput(
+            [Problem("command line", "--cluster", address, "needs the extra: pip install 'localcomp[cluster]'")]
+        ) from None
+    try:
+        client = Client(address, timeout=CONNECT_SECONDS, set_as_default=False)
+    except (OSError, ValueError, TimeoutError) as error:
+        raise BadInput(
+            [Problem("command line", "--cluster", address, f"no scheduler answers there ({error})")]
+        ) from None
+    try:
+        yield client.get_executor(pure=False, retries=5)
+    finally:
+        client.close()
