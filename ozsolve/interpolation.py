@@ -28,6 +28,11 @@ class Scatter:
         self._inverse: Array | None = None
         self._stacked: Array | None = None
 
+    @property
+    def known(self) -> int:
+        """How many points are remembered."""
+        return len(self._points)
+
     def add(self, point: Array, value: Array) -> None:
         """Remember a value of shape (size,) at a point of shape (d,)."""
         if len(self._points) < MOST_POINTS:

@@ -28,7 +28,7 @@ from ozsolve.iteration import BatchOutcome, iterate_many
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import eigenvalues_above
 from ozsolve.potential import Array, Indices
-from ozsolve.root import LOOSE, NEAR_INSTABILITY, QUICK_STEPS, bridge_function
+from ozsolve.root import LOOSE, NEAR_INSTABILITY, QUICK_STEPS, bridge_function, on_first_branch
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.solver import (
     COARSE_TOLERANCE_FACTOR,
@@ -42,7 +42,7 @@ from ozsolve.solver import (
     tail,
 )
 from ozsolve.stopping import Status, StoppingRule
-from ozsolve.thermodynamics import ERROR_SHARE, Observables, observe_many
+from ozsolve.thermodynamics import COUNT_SHARE, ERROR_SHARE, Observables, observe_many
 
 BATCH = 32
 """States in a batch: three pairs of 400 points and the accelerator's memory then fit the cache."""
@@ -50,6 +50,8 @@ GRID_SHARES = (1.0, 0.1, 0.01)
 """Shares of the accuracy that choose the grid, one pass after another for states whose bar is too wide."""
 SEEDS = 5
 """Members of a family solved first, to interpolate from and to take secant pairs from."""
+BRIEF_STEPS = 24
+"""Steps from a good start; a state that needs more waits for a better one, so as not to hold up its batch."""
 SEED_DEPTH = 16
 """Secant pairs a seed remembers: enough to span the slow directions."""
 
@@ -82,6 +84,7 @@ class _Job:
     accuracy: float
     results: list[Solution | None]
     too_rough: list[int] = field(default_factory=list)
+    missed: list[tuple[_Family, int]] = field(default_factory=list)
     stepper: Anderson = field(default_factory=Anderson)
 
     def __post_init__(self) -> None:
@@ -137,6 +140,7 @@ def solve_many(
             ready = [family for family in families if family.reference_fine is not None]
             for batch in _batches(ready):
                 _solve_batch(job, grid, batch)
+            _second_attempt(job, grid)
         remaining = job.too_rough
     return [
         found if found is not None else solve(*case, closure=chosen, accuracy=accuracy, on_failure="return")
@@ -217,6 +221,18 @@ def _batches(families: list[_Family]) -> list[list[tuple[_Family, int]]]:
     return batches
 
 
+def _second_attempt(job: _Job, grid: Grid) -> None:
+    """States that did not converge from their first start, from what their family knows by now."""
+    again: dict[int, list[tuple[_Family, int]]] = {}
+    for family, n in job.missed:
+        if family.recycled is not None and family.coarse.known:
+            again.setdefault(id(family), []).append((family, n))
+    job.missed = []
+    for batch in again.values():
+        _solve_batch(job, grid, batch)
+    job.missed = []
+
+
 def _solve_batch(job: _Job, grid: Grid, batch: list[tuple[_Family, int]]) -> None:
     """One batch on both grids; accepted states go to the results and to their family's memory."""
     began = time.perf_counter()
@@ -232,8 +248,10 @@ def _solve_batch(job: _Job, grid: Grid, batch: list[tuple[_Family, int]]) -> Non
     if shared is None:
         first = iterate_many(coarse, start, job.rough, Anderson(SEED_DEPTH), capture=True)
     else:
-        first = iterate_many(coarse, start, job.rough, job.stepper, shared.recycled)
+        brief = StoppingRule(job.rough.tolerance, BRIEF_STEPS)
+        first = iterate_many(coarse, start, brief, job.stepper, shared.recycled)
     rows = np.flatnonzero(first.good)
+    job.missed += [batch[row] for row in np.flatnonzero(~first.good)]
     if len(rows) == 0:
         return
     lifted = regrid(first.x, pairs, grid, finer)
@@ -243,7 +261,9 @@ def _solve_batch(job: _Job, grid: Grid, batch: list[tuple[_Family, int]]) -> Non
         if correction is not None:
             start[row] += correction
     part = fine if len(rows) == len(batch) else fine.take(rows)
-    second = iterate_many(part, start[rows], job.rule, job.stepper, None if shared is None else shared.recycled_fine)
+    ending = StoppingRule(job.rule.tolerance, BRIEF_STEPS)
+    second = iterate_many(part, start[rows], ending, job.stepper, None if shared is None else shared.recycled_fine)
+    job.missed += [batch[rows[row]] for row in np.flatnonzero(~second.good)]
     _accept(job, batch, coarse, part, first, second, rows, lifted, began)
     if shared is None:
         _remember_secants(batch, first, grid, pairs)
@@ -298,11 +318,11 @@ def _accept(
     seconds = (time.perf_counter() - began) / len(batch)
     for row, place in enumerate(chosen):
         family, member = batch[place]
-        if not stable[row]:
+        if not stable[row] and not on_first_branch(sharp_equations.take(np.array([row])), x[row : row + 1]):
             continue
         family.coarse.add(family.depths[member], first.x[place])
         family.correction.add(family.depths[member], x[row] - lifted[place])
-        if roughness[row] + floors[row] > job.accuracy:
+        if COUNT_SHARE * roughness[row] + floors[row] > job.accuracy:
             job.too_rough.append(family.members[member])
             continue
         steps = int(first.steps[place] + second.steps[kept[row]])
@@ -335,7 +355,7 @@ def _solution(
         errors=observables.bars(roughness, floor),
         fine=LevelResult(fluid, fine.grid, job.closure, x[None].copy(), family.reference_fine[None]),
         coarse=LevelResult(fluid, coarse.grid, job.closure, x_coarse[None].copy(), family.reference[None]),
-        relative_error=roughness + floor,
+        relative_error=COUNT_SHARE * roughness + floor,
         residuals=(residual,),
         stats=Stats(steps, 2 * steps, fine.grid.points, fine.grid.spacing, fine.grid.extent, (), 0, seconds),
     )

@@ -122,7 +122,7 @@ def find_root(
     if status is not Status.SOLVED:
         return Root(equations, np.zeros_like(reference), status, 0.0, reference, [], counters)
     outcome = _quick(equations, reference, start, rule, stepper, counters)
-    if outcome.good and _on_first_branch(equations, outcome.x):
+    if outcome.good and on_first_branch(equations, outcome.x):
         return Root(equations, outcome.x, Status.SOLVED, 1.0, reference, outcome.residuals, counters)
     return _sure(equations, reference, rule, stepper, counters)
 
@@ -164,7 +164,7 @@ def _quick(
     return counters.add(iterate(equations, start, brief, stepper))
 
 
-def _on_first_branch(equations: Equations, x: Array) -> bool:
+def on_first_branch(equations: Equations, x: Array) -> bool:
     """Whether I - G' has no negative real eigenvalue, as on the branch that starts at hard spheres.
 
     Two solutions merge where the branch ends, and one eigenvalue of I - G' changes sign there. Far

@@ -24,7 +24,7 @@ from ozsolve.potential import Array
 from ozsolve.root import Counters, Root, find_root
 from ozsolve.solution import LevelResult, Solution, Stats, reduced_fluid
 from ozsolve.stopping import Status, StoppingRule
-from ozsolve.thermodynamics import ERROR_SHARE, Observables, observe
+from ozsolve.thermodynamics import COUNT_SHARE, ERROR_SHARE, Observables, observe
 
 FINEST_ACCURACY, COARSEST_ACCURACY = 1e-10, 1e-2
 DEFAULT_ACCURACY = 1e-5
@@ -168,11 +168,12 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
         sharp = observe(fine.equations, fine.x)
         floor = RESIDUAL_GAIN * tolerance + _tail(fine)
         roughness = ERROR_SHARE * float(sharp.roughness(rough))
-        reached = roughness + floor <= accuracy
+        relative_error = COUNT_SHARE * roughness + floor
+        reached = relative_error <= accuracy
         last = level == MAX_REFINEMENTS - 1 or finer.points * REFINEMENT > MAX_POINTS
         if reached or last:
             status = Status.SOLVED if reached else Status.ACCURACY_NOT_REACHED
-            return _Ladder(status, fine, coarse, sharp, sharp.bars(roughness, floor), roughness + floor, counters)
+            return _Ladder(status, fine, coarse, sharp, sharp.bars(roughness, floor), relative_error, counters)
         coarse, grid, rough = fine, finer, sharp
     raise AssertionError("the loop above always returns")
 

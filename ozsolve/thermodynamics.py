@@ -101,15 +101,16 @@ class Observables:
         floor : float
             What the residual and the extent add to every number.
         """
-        bar = {
-            name: scale * (SENSITIVITY.get(name, SENSITIVITY["c_zero"]) * roughness + floor)
-            for name, scale in self.scales().items()
-        }
+        usual = {**SENSITIVITY, "h_zero": SENSITIVITY["c_zero"], "shell_integral": COUNT_SHARE}
+        bar = {name: scale * (usual[name] * roughness + floor) for name, scale in self.scales().items()}
         return Observables(*(bar[name] for name in TABLES), *(float(bar[name]) for name in NUMBERS))
 
 
 TABLES = ("shell_integral", "contact", "inner_edge", "outer_edge", "c_zero", "h_zero")
 NUMBERS = ("energy", "virial", "inverse_compressibility")
+COUNT_SHARE = 0.5
+"""Coordination numbers keep within half of the bound pooled from all numbers (same states: 99 % within
+a third of it)."""
 SENSITIVITY = {
     "shell_integral": 1.0,
     "contact": 16.0,
