@@ -12,8 +12,8 @@ import ozsolve
 ROOT = Path(__file__).resolve().parents[1]
 LADDER = [
     "errors", "potential", "mixture", "grid", "closures", "transform", "oz", "stopping", "equations", "anderson",
-    "iteration", "newton", "continuation", "thermodynamics", "root", "response", "solution", "solver", "interpolation",
-    "many", "reference",
+    "iteration", "newton", "continuation", "thermodynamics", "root", "response", "solution", "solver",
+    "interpolation", "job", "many", "reference",
 ]  # fmt: skip
 ONLY_IN = {
     "pyfftw": ["ozsolve/transform.py"],
