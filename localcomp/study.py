@@ -20,7 +20,7 @@ import numpy as np
 from localcomp.errors import BadInput, Problem
 from localcomp.inputs import MAX_PACKING, read_accuracy, read_mixture, read_shell, read_units
 from localcomp.shells import FixedMultiple, ShellRule
-from localcomp.tables import Table, as_number, load_toml
+from localcomp.tables import SIZE_LIMITS, Table, as_number, load_toml, of_usable_size
 from localcomp.units import Units
 from ozsolve import CLOSURES, InputError, Mixture, State
 
@@ -161,6 +161,9 @@ def values(
         if set(raw) != {"from", "to", "steps"} or first is None or last is None or not _is_count(steps):
             table.complain(key, raw, f"{allowed}; a range is {{ from = 1, to = 2, steps = 5 }} with 2 to 1000 steps")
             return []
+        if not (of_usable_size(first) and of_usable_size(last)):
+            table.complain(key, raw, allowed + SIZE_LIMITS)
+            return []
         found = [float(v) for v in np.linspace(first, last, steps)]
     elif isinstance(raw, list):
         found = [as_number(v) for v in raw]
@@ -169,6 +172,9 @@ def values(
     good = [v for v in found if v is not None and accept(v)]
     if not good or len(good) != len(found):
         table.complain(key, raw, f"{allowed}: a number, a list, or a range {{ from, to, steps }}")
+        return []
+    if not all(map(of_usable_size, good)):
+        table.complain(key, raw, allowed + SIZE_LIMITS)
         return []
     return list(dict.fromkeys(good))
 

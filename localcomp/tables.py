@@ -15,6 +15,7 @@ LARGEST_FILE = 64 * 1024
 """Bytes; the TOML parser's time can grow with the square of the size."""
 SMALLEST_NUMBER, LARGEST_NUMBER = 1e-30, 1e30
 """Sizes of numbers in files: their cubes and quotients stay finite, SI units of molecules included."""
+SIZE_LIMITS = f"; in size between {SMALLEST_NUMBER:g} and {LARGEST_NUMBER:g}"
 LONGEST_SHOWN = 60
 
 
@@ -169,9 +170,8 @@ class Table:
         if len(numbers) < len(items):
             self._add(key, self.content[key], allowed)
             return None
-        if not all(number == 0.0 or SMALLEST_NUMBER <= abs(number) <= LARGEST_NUMBER for number in numbers):
-            limits = f"; in size between {SMALLEST_NUMBER:g} and {LARGEST_NUMBER:g}"
-            self._add(key, self.content[key], allowed + limits)
+        if not all(map(of_usable_size, numbers)):
+            self._add(key, self.content[key], allowed + SIZE_LIMITS)
             return None
         return numbers
 
@@ -192,6 +192,11 @@ class Table:
             self._add(key, value, "must be a short line of text")
             return default
         return value
+
+
+def of_usable_size(number: float) -> bool:
+    """Whether a number is zero or neither tiny nor huge."""
+    return number == 0.0 or SMALLEST_NUMBER <= abs(number) <= LARGEST_NUMBER
 
 
 def as_number(value: object) -> float | None:

@@ -28,7 +28,7 @@ def with_error(value: float, bar: float) -> str:
     digits = 0
     while digits < 9 and bar * 10**digits < 0.95:
         digits += 1
-    return f"{value:.{digits}f}({math.ceil(bar * 10**digits - 0.05)})"
+    return f"{value:.{digits}f}({max(math.ceil(bar * 10**digits - 0.05), 1)})"
 
 
 def plain(value: float, decimals: int = 4) -> str:
