@@ -16,7 +16,7 @@ from scipy.optimize import brentq
 
 from localcomp.energyroute import energy_route
 from localcomp.errors import BadInput, NoAnswer, Problem
-from localcomp.inputs import positive
+from localcomp.inputs import not_this_kind, positive
 from localcomp.tables import Table, load_toml
 from localcomp.units import GAS_CONSTANT, density_from_molar_volume
 from ozsolve import CLOSURES, Mixture, State, solve
@@ -116,6 +116,7 @@ def read_liquid(path: str | Path) -> PureLiquid:
     content = load_toml(path)
     problems: list[Problem] = []
     top = Table(str(path), "", content, problems)
+    not_this_kind(top, {"state": "a state file: localcomp state", "conditions": "a study: localcomp sweep"})
     top.known(("fluid",))
     if "fluid" not in content:
         top.missing("[fluid]", "a [fluid] table is needed")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -49,6 +50,19 @@ class StateFile:
     rule: ShellRule
 
 
+def not_this_kind(top: Table, signs: dict[str, str]) -> None:
+    """Refuse a file that is plainly meant for another command.
+
+    Raises
+    ------
+    BadInput
+        Naming the command it is for.
+    """
+    for table, what in signs.items():
+        if table in top.content:
+            raise BadInput([Problem(top.file, f"[{table}]", "", f"this looks like {what} takes it")])
+
+
 def positive(value: float) -> bool:
     """Accept positive numbers."""
     return value > 0.0
@@ -66,6 +80,7 @@ def read_state(path: str | Path) -> StateFile:
     content = load_toml(path)
     problems: list[Problem] = []
     top = Table(str(path), "", content, problems)
+    not_this_kind(top, {"fluid": "a pure-liquid file: localcomp calibrate", "conditions": "a study: localcomp sweep"})
     top.known(("mixture", "state", "units", "shell", "numerics"))
     for needed in ("mixture", "state"):
         if needed not in content:
@@ -143,7 +158,9 @@ def read_mixture(table: Table) -> Mixture | None:
     try:
         return Mixture(diameter, depth, reach, k=k, l=l_, names=names, overrides=overrides)
     except InputError as error:
-        table.complain(error.field, error.value, error.allowed)
+        labels = names or [str(n + 1) for n in range(len(diameter))]
+        field = re.sub(r"\((\d+), (\d+)\)", lambda m: " - ".join(labels[int(n)] for n in m.groups()), error.field)
+        table.complain(field, error.value, error.allowed)
         return None
 
 
@@ -241,6 +258,7 @@ def _state(table: Table, mixture: Mixture | None, units: Units) -> tuple[State, 
         state = State(temperature, tuple(fractions), packing_fraction=packing, density=density)
         if mixture is not None:
             mixture.densities(state)
+            mixture.reduced_depths(state)
     except InputError as error:
         key = "molar_volume" if error.field == "density" and "molar_volume" in table.content else error.field
         table.complain(key, table.content.get(key, error.value), error.allowed)

@@ -9,6 +9,7 @@ from __future__ import annotations
 import csv
 import io
 import math
+import re
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -70,7 +71,9 @@ class StateReport:
     @property
     def message(self) -> str:
         """One sentence about the end."""
-        return self.shell_reason or self.solution.message
+        if self.shell_reason or not self.request.units.real:
+            return self.shell_reason or self.solution.message
+        return re.sub(r"kT = ([-+.\deE]+\d)", r"T = \1 K", self.solution.message)
 
     @property
     def warnings(self) -> tuple[str, ...]:
@@ -86,7 +89,7 @@ class StateReport:
                 "(a smaller volume would relax it)"
             )
         if self.route_reason:
-            notes.append(f"energy route: {self.route_reason}")
+            notes.append(f"no energy route: {self.route_reason}")
         return tuple(notes)
 
 

@@ -18,7 +18,7 @@ from typing import Any, TypeGuard
 import numpy as np
 
 from localcomp.errors import BadInput, Problem
-from localcomp.inputs import MAX_PACKING, read_accuracy, read_mixture, read_shell, read_units
+from localcomp.inputs import MAX_PACKING, not_this_kind, read_accuracy, read_mixture, read_shell, read_units
 from localcomp.shells import FixedMultiple, ShellRule
 from localcomp.tables import SIZE_LIMITS, Table, as_number, load_toml, of_usable_size
 from localcomp.units import Units
@@ -119,6 +119,7 @@ def read_study(path: str | Path) -> Study:
     problems: list[Problem] = []
     file = str(path)
     top = Table(file, "", content, problems)
+    not_this_kind(top, {"state": "a state file: localcomp state", "fluid": "a pure-liquid file: localcomp calibrate"})
     top.known(("study", "class", "pair", "mixtures", "conditions", "units", "shell", "numerics"))
     heading = Table(file, "study", content.get("study", {}), problems)
     heading.known(("name",))
@@ -276,6 +277,7 @@ def _cases(
         try:
             state = State(reduced * unit, fractions, packing_fraction=eta)
             mixture.densities(state)
+            mixture.reduced_depths(state)
         except InputError as error:
             table.complain(error.field, error.value, error.allowed)
             return

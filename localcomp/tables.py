@@ -38,7 +38,7 @@ def load_toml(path: Path) -> dict[str, Any]:
         with path.open("rb") as stream:  # a bounded read: devices and pipes have no size to ask for
             raw = stream.read(LARGEST_FILE + 1)
     except FileNotFoundError:
-        near = _nearest(path.name, [p.name for p in _siblings(path)])
+        near = nearest(path.name, [p.name for p in _siblings(path)])
         raise fail(f"no such file{near}") from None
     except (OSError, ValueError) as error:
         raise fail(f"cannot be read ({getattr(error, 'strerror', None) or error})") from None
@@ -65,7 +65,8 @@ def _siblings(path: Path) -> list[Path]:
         return []
 
 
-def _nearest(name: str, known: Iterable[str]) -> str:
+def nearest(name: str, known: Iterable[str]) -> str:
+    """A question after the nearest known name, or nothing when none is near."""
     match = difflib.get_close_matches(name, list(known), n=1, cutoff=0.6)
     return f'; did you mean "{match[0]}"?' if match else ""
 
@@ -120,7 +121,7 @@ class Table:
         allowed = list(keys)
         for key, value in self.content.items():
             if key not in allowed:
-                near = _nearest(key, allowed)
+                near = nearest(key, allowed)
                 self._add(key, value, f"unknown key{near or '; known: ' + ', '.join(allowed)}")
 
     def missing(self, key: str, allowed: str) -> None:
@@ -180,7 +181,7 @@ class Table:
         options = list(choices)
         value = self.content.get(key, default)
         if not isinstance(value, str) or value.lower() not in options:
-            near = _nearest(value.lower(), options) if isinstance(value, str) else ""
+            near = nearest(value.lower(), options) if isinstance(value, str) else ""
             self._add(key, value, f"one of: {', '.join(options)}{near}")
             return default
         return value.lower()

@@ -95,36 +95,52 @@ class Anderson:
             following = image.copy()
         else:
             slot = history.filled % self.depth
-            difference = history.d_residual[:, slot]
-            np.subtract(residual, history.residual, out=difference)
-            np.subtract(image, history.image, out=history.d_image[:, slot])
             history.filled += 1
             used = min(history.filled, self.depth)
-            d_residual = history.d_residual[:, :used]
-            row = np.matmul(d_residual, difference[:, :, None])[:, :, 0]
-            row[:, slot] *= 1.0 + RIDGE
-            history.gram[:, slot, :used] = row
-            history.gram[:, :used, slot] = row
-            target = np.matmul(d_residual, residual[:, :, None])
-            theta = _solve_small(history.gram[:, :used, :used], target)
-            if theta is None:  # a repeated step: nothing to learn from, begin again
-                history.filled = 0
-                history.restarts += 1
-                following = image.copy()
-            else:
-                following = image - np.matmul(theta.transpose(0, 2, 1), history.d_image[:, :used])[:, 0]
+            one = len(image) == 1
+            following = (
+                _step_one(image, residual, history, slot, used)
+                if one
+                else _step_many(image, residual, history, slot, used)
+            )
         history.residual = residual
         history.image = image
         return following
 
 
-def _solve_small(gram: Array, target: Array) -> Array | None:
-    """gram^-1 target for a stack of small positive definite matrices; None when one is singular."""
-    if len(gram) == 1:  # one state: the LAPACK routine itself, a quarter of the time of a stacked solve
-        _, theta, info = dposv(gram[0], target[0])
-        return theta[None] if info == 0 else None
+def _step_one(image: Array, residual: Array, history: History, slot: int, used: int) -> Array:
+    """The step of a single state, in flat arrays: half the time of the batched form."""
+    d_residual, d_image, gram = history.d_residual[0], history.d_image[0], history.gram[0]
+    np.subtract(residual[0], history.residual[0], out=d_residual[slot])
+    np.subtract(image[0], history.image[0], out=d_image[slot])
+    seen = d_residual[:used]
+    row = seen @ d_residual[slot]
+    row[slot] *= 1.0 + RIDGE
+    gram[slot, :used] = row
+    gram[:used, slot] = row
+    _, theta, info = dposv(gram[:used, :used], seen @ residual[0])
+    if info != 0:  # a repeated step: nothing to learn from, begin again
+        history.filled = 0
+        history.restarts += 1
+        return image.copy()
+    return np.asarray(image - theta @ d_image[:used])
+
+
+def _step_many(image: Array, residual: Array, history: History, slot: int, used: int) -> Array:
+    difference = history.d_residual[:, slot]
+    np.subtract(residual, history.residual, out=difference)
+    np.subtract(image, history.image, out=history.d_image[:, slot])
+    d_residual = history.d_residual[:, :used]
+    row = np.matmul(d_residual, difference[:, :, None])[:, :, 0]
+    row[:, slot] *= 1.0 + RIDGE
+    history.gram[:, slot, :used] = row
+    history.gram[:, :used, slot] = row
+    target = np.matmul(d_residual, residual[:, :, None])
+    safe = history.gram[:, :used, :used] + np.finfo(np.float64).tiny * np.eye(used)  # a finished state may stand still
     try:
-        safe = gram + np.finfo(np.float64).tiny * np.eye(gram.shape[-1])  # a finished state may stand still
-        return np.asarray(np.linalg.solve(safe, target), dtype=np.float64)
+        theta = np.linalg.solve(safe, target)
     except np.linalg.LinAlgError:
-        return None
+        history.filled = 0
+        history.restarts += 1
+        return image.copy()
+    return np.asarray(image - np.matmul(theta.transpose(0, 2, 1), history.d_image[:, :used])[:, 0])

@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ozsolve.closures import BoundClosure, Closure
-from ozsolve.grid import Grid, step_weights
+from ozsolve.grid import Grid, indicators
 from ozsolve.oz import eigenvalues_above, indirect, indirect_response, pair_index
 from ozsolve.potential import Array, Flags, Indices
 from ozsolve.transform import plan
@@ -94,8 +94,7 @@ class Equations:
 
     def _indicator(self, edges: Array) -> Array:
         grid = self.grid
-        rows = [step_weights(float(edge), grid.spacing, grid.points) for edge in edges.ravel()]
-        return np.array(rows).reshape(*edges.shape, -1)
+        return indicators(tuple(edges.ravel().tolist()), grid.spacing, grid.points).reshape(*edges.shape, -1)
 
     def gamma(self, x: Array) -> Array:
         """gamma(r), shape (b, pairs, m), from x = r gamma."""

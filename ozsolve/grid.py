@@ -14,7 +14,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from ozsolve.potential import Array
+from ozsolve.potential import Array, Indices
 
 STENCIL = 6
 """Points corrected around an edge; more gained nothing in trials, the kinks of gamma set the limit."""
@@ -105,6 +105,25 @@ def edge_interpolation(edge: float, spacing: float, points: int) -> tuple[int, A
     weights = ratios.prod(axis=1)
     weights.setflags(write=False)
     return start - 1, weights
+
+
+@lru_cache(maxsize=512)
+def indicators(edges: tuple[float, ...], spacing: float, points: int) -> Array:
+    """`step_weights` of several edges, shape (len(edges), points - 1), read-only."""
+    weights = np.array([step_weights(edge, spacing, points) for edge in edges])
+    weights.setflags(write=False)
+    return weights
+
+
+@lru_cache(maxsize=512)
+def edge_stencils(edges: tuple[float, ...], spacing: float, points: int) -> tuple[Indices, Array]:
+    """`edge_interpolation` of several edges: grid indices and weights, each (len(edges), INTERPOLATION)."""
+    found = [edge_interpolation(edge, spacing, points) for edge in edges]
+    index = np.array([start for start, _ in found])[:, None] + np.arange(INTERPOLATION)
+    weights = np.array([row for _, row in found])
+    for array in (index, weights):
+        array.setflags(write=False)
+    return index, weights
 
 
 def good_size(minimum: int) -> int:

@@ -7,6 +7,7 @@ other lets states leave as they finish.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,8 +30,8 @@ class Outcome:
     status : Status
     residuals : list of float
         max |G(x) - x| at every step, the starting one first.
-    definite : bool
-        Whether I - C(k) is positive definite at every k for the last x.
+    equations : Equations
+        What was iterated.
     restarts : int
         Times the accelerator threw its history away.
     """
@@ -38,8 +39,13 @@ class Outcome:
     x: Array
     status: Status
     residuals: list[float]
-    definite: bool
+    equations: Equations
     restarts: int = 0
+
+    @cached_property
+    def definite(self) -> bool:
+        """Whether I - C(k) is positive definite at every k for the last x; worked out when asked."""
+        return bool(self.equations.definite(self.x)[0])
 
     @property
     def good(self) -> bool:
@@ -76,8 +82,7 @@ def iterate(equations: Equations, x: Array, rule: StoppingRule, stepper: Anderso
                 status = Status.DIVERGED
                 break
             x = stepper.step(image, residual, history)
-        definite = status is not Status.NONFINITE and bool(equations.definite(x)[0])
-    return Outcome(x, status, residuals, definite, history.restarts)
+    return Outcome(x, status, residuals, equations, history.restarts)
 
 
 @dataclass

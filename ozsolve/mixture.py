@@ -10,11 +10,12 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from ozsolve.errors import InputError
-from ozsolve.potential import Array, PairOverride, PairTable, combine, symmetric, vector
+from ozsolve.potential import MAX_SIZE_RATIO, Array, PairOverride, PairTable, combine, symmetric, vector
 
 FRACTION_SUM_TOLERANCE = 1e-9
 MAX_PACKING_FRACTION = 0.55
-MAX_SIZE_RATIO = 20.0
+MAX_REDUCED_DEPTH = 100.0
+"""Largest |beta eps|; branches of physical solutions end long before."""
 
 
 class Mixture:
@@ -112,6 +113,20 @@ class Mixture:
         if not 0.0 < eta < MAX_PACKING_FRACTION:
             raise InputError("density", rho, f"packing fraction {eta:.4g} must lie inside (0, {MAX_PACKING_FRACTION})")
         return x * rho
+
+    def reduced_depths(self, state: State) -> Array:
+        """beta eps_ij, shape (s, s).
+
+        Raises
+        ------
+        InputError
+            If the temperature is absurdly low for these wells.
+        """
+        depth = self.pairs.well_depth / state.temperature
+        if np.abs(depth).max() > MAX_REDUCED_DEPTH:
+            lowest = float(np.abs(self.pairs.well_depth).max()) / MAX_REDUCED_DEPTH
+            raise InputError("temperature", state.temperature, f"must be at least {lowest:.4g} for wells this deep")
+        return depth
 
     def packing_fraction(self, state: State) -> float:
         """eta = (pi/6) sum_i rho_i sigma_ii^3, dimensionless."""

@@ -32,9 +32,9 @@ def newton(equations: Equations, x: Array, rule: StoppingRule) -> Outcome:
             norm = float(np.abs(residual).max())
             residuals.append(norm)
             if not np.isfinite(norm):
-                return Outcome(x, Status.NONFINITE, residuals, False)
+                return Outcome(x, Status.NONFINITE, residuals, equations)
             if norm < rule.tolerance:
-                return Outcome(image, Status.SOLVED, residuals, bool(equations.definite(image)[0]))
+                return Outcome(image, Status.SOLVED, residuals, equations)
             direction = solve_linear(equations, x, residual, FORCING)
             length = float(np.linalg.norm(residual))
             size = 1.0
@@ -47,9 +47,9 @@ def newton(equations: Equations, x: Array, rule: StoppingRule) -> Outcome:
                     break
                 size *= 0.5
                 if size < SHORTEST_STEP:
-                    return Outcome(x, Status.DIVERGED, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
+                    return Outcome(x, Status.DIVERGED, residuals, equations)
             x = trial
-    return Outcome(x, Status.MAX_STEPS, residuals, bool(smallest_pivot(pivots)[0] > 0.0))
+    return Outcome(x, Status.MAX_STEPS, residuals, equations)
 
 
 def solve_linear(equations: Equations, x: Array, right: Array, relative: float) -> Array:

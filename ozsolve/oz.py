@@ -116,24 +116,35 @@ def indirect(c_k: Array, root_rho: Array) -> tuple[Array, list[Array]]:
 def _indirect_binary(c_k: Array, root_rho: Array) -> tuple[Array, list[Array]]:
     """The same for two species, multiplied out: a and det/a are the two pivots of the 2 x 2 matrix."""
     rho = root_rho * root_rho
-    rho_1, rho_2 = rho[:, :1], rho[:, 1:]
-    c_11, c_12, c_22 = c_k[:, 0], c_k[:, 1], c_k[:, 2]
-    a = 1.0 - rho_1 * c_11
-    d = 1.0 - rho_2 * c_22
+    if len(c_k) == 1:  # plain numbers and flat arrays: a third less time at this size
+        gamma_k, pivots = _binary(c_k[0], float(rho[0, 0]), float(rho[0, 1]))
+        return gamma_k[None], [pivot[None] for pivot in pivots]
+    by_pair, pivots = _binary(c_k.swapaxes(0, 1), rho[:, :1], rho[:, 1:])
+    return by_pair.swapaxes(0, 1), pivots
+
+
+def _binary(c_k: Array, rho_1: Array | float, rho_2: Array | float) -> tuple[Array, list[Array]]:
+    """gamma and pivots with the three pairs in front."""
+    c_11, c_12, c_22 = c_k
+    a = c_11 * -rho_1
+    a += 1.0
+    d = c_22 * -rho_2
+    d += 1.0
     square = c_12 * c_12
     determinant = a * d
-    determinant -= (rho_1 * rho_2) * square
+    determinant -= square * (rho_1 * rho_2)
     inverse = 1.0 / determinant
     gamma_k = np.empty_like(c_k)
-    for slot, (other, c, rho_other) in enumerate(((d, c_11, rho_2), (a, c_22, rho_1))):
-        out = gamma_k[:, 2 * slot]
+    for slot, other, c, rho_other in ((0, d, c_11, rho_2), (2, a, c_22, rho_1)):
+        out = gamma_k[slot]
         np.multiply(other, c, out=out)
-        out += rho_other * square
+        out += square * rho_other
         out *= inverse
         out -= c
-    np.multiply(c_12, inverse, out=gamma_k[:, 1])
-    gamma_k[:, 1] -= c_12
-    return gamma_k, [a, determinant / a]
+    inverse -= 1.0
+    np.multiply(c_12, inverse, out=gamma_k[1])
+    determinant /= a
+    return gamma_k, [a, determinant]
 
 
 def smallest_pivot(pivots: list[Array]) -> Array:

@@ -173,7 +173,19 @@ def _apply(pair: PairOverride, core: Array, depth: Array, edge: Array, given_dep
         given_depth[i, j] = given_depth[j, i] = True
 
 
+MAX_SIZE_RATIO = 20.0
+MAX_REACH = 100.0
+"""Longest well over smallest diameter: the grid has to span one and resolve the other."""
+
+
 def _check_table(core: Array, edge: Array) -> None:
+    if core.max() > MAX_SIZE_RATIO * core.min() > 0.0 or edge.max() > MAX_REACH * core.min() > 0.0:
+        raise InputError(
+            "diameter",
+            [float(core.min()), float(core.max()), float(edge.max())],
+            f"over all pairs (smallest, largest, longest well) size ratios up to {MAX_SIZE_RATIO:g} and wells up to "
+            f"{MAX_REACH:g} smallest diameters are supported",
+        )
     for i, j in zip(*np.triu_indices(len(core)), strict=True):
         if core[i, j] <= 0.0:
             raise InputError(f"diameter of pair ({i}, {j})", float(core[i, j]), "must be positive")

@@ -122,7 +122,7 @@ def find_root(
     if status is not Status.SOLVED:
         return Root(equations, np.zeros_like(reference), status, 0.0, reference, [], counters)
     outcome = _quick(equations, reference, start, rule, stepper, counters)
-    if outcome.good and on_first_branch(equations, outcome.x):
+    if outcome.status is Status.SOLVED and on_first_branch(equations, outcome.x):
         return Root(equations, outcome.x, Status.SOLVED, 1.0, reference, outcome.residuals, counters)
     return _sure(equations, reference, rule, stepper, counters)
 
@@ -159,7 +159,7 @@ def _quick(
             loose = StoppingRule(max(LOOSE, rule.tolerance), QUICK_STEPS)
             spherical = Equations(equations.fluid, equations.grid, MSA)
             outcome = counters.add(iterate(spherical, reference, loose, stepper))
-            if outcome.good:
+            if outcome.status is Status.SOLVED:  # only a start: the answer is judged, not the way to it
                 start = outcome.x
     return counters.add(iterate(equations, start, brief, stepper))
 

@@ -334,12 +334,11 @@ def _frozen(array: Array) -> Array:
 def reduced_fluid(mixture: Mixture, state: State) -> tuple[Fluid, float]:
     """The state in units of the smallest diameter and kT, as a batch of one; and that diameter."""
     i, j = np.triu_indices(mixture.species)
-    length = float(np.min(np.diag(mixture.pairs.diameter)))
-    length = min(length, float(mixture.pairs.diameter.min()))
+    length = float(mixture.pairs.diameter.min())
     fluid = Fluid(
         rho=(mixture.densities(state) * length**3)[None],
         core=(mixture.pairs.diameter[i, j] / length)[None],
         edge=(mixture.pairs.well_edge[i, j] / length)[None],
-        attraction=(mixture.pairs.well_depth[i, j] / state.temperature)[None],
+        attraction=mixture.reduced_depths(state)[i, j][None],
     )
     return fluid, length

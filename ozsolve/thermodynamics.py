@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ozsolve.equations import Equations
-from ozsolve.grid import edge_interpolation, step_weights
+from ozsolve.grid import edge_stencils, step_weights
 from ozsolve.oz import unpack
 from ozsolve.potential import Array
 
@@ -194,22 +194,23 @@ def _upto(edge: float, equations: Equations) -> Array:
 
 
 def interpolate(values: Array, edges: Array, equations: Equations) -> Array:
-    """Smooth functions sampled on the grid, (b, pairs, m), at r = edges, (b, pairs)."""
+    """Smooth functions sampled on the grid, (b, pairs, m), at r = edges, (b, pairs, e); shape of edges."""
     grid = equations.grid
-    found = [edge_interpolation(float(edge), grid.spacing, grid.points) for edge in edges.ravel()]
-    start = np.array([first for first, _ in found]).reshape(*edges.shape, 1)
-    weights = np.array([row for _, row in found]).reshape(*edges.shape, -1)
-    index = start + np.arange(weights.shape[-1])
-    return np.asarray(np.sum(np.take_along_axis(values, index, axis=-1) * weights, axis=-1))
+    index, weights = edge_stencils(tuple(edges.ravel().tolist()), grid.spacing, grid.points)
+    shape = (*edges.shape[:2], -1)
+    near = np.take_along_axis(values, index.reshape(shape), axis=-1) * weights.reshape(shape)
+    return np.asarray(near.reshape(*edges.shape, -1).sum(axis=-1))
 
 
 def edge_values(equations: Equations, gamma: Array) -> tuple[Array, Array, Array]:
     """g at contact, inside the well edge, outside it; each (b, pairs). gamma is smooth there, so it is
     interpolated and the closure applied on each side."""
     fluid, closure = equations.fluid, equations.closure
-    bridge = np.broadcast_to(equations.bridge, equations.shape)
-    at_core, at_edge = (interpolate(gamma, edges, equations) for edges in (fluid.core, fluid.edge))
-    bridge_core, bridge_edge = (interpolate(bridge, edges, equations) for edges in (fluid.core, fluid.edge))
+    edges = np.stack((fluid.core, fluid.edge), axis=-1)
+    at_core, at_edge = np.moveaxis(interpolate(gamma, edges, equations), -1, 0)
+    bridge_core = bridge_edge = np.zeros_like(at_core)
+    if equations.bridge.shape[-1] > 1:
+        bridge_core, bridge_edge = np.moveaxis(interpolate(equations.bridge, edges, equations), -1, 0)
     return (
         closure.g(at_core, fluid.attraction, bridge_core),
         closure.g(at_edge, fluid.attraction, bridge_edge),

@@ -69,13 +69,15 @@ def state(
 
 def _overridden(request: StateFile, closure: str | None, accuracy: float | None) -> StateFile:
     """The request with the command line's closure and accuracy."""
-    from ozsolve import InputError, get_closure
+    from localcomp.tables import nearest
+    from ozsolve import CLOSURES, InputError, get_closure
 
     if closure is not None:
         try:
             request = replace(request, closure=get_closure(closure).name)
         except InputError as error:
-            raise BadInput([Problem("command line", "--closure", closure, error.allowed)]) from None
+            near = nearest(closure.lower(), CLOSURES)
+            raise BadInput([Problem("command line", "--closure", closure, error.allowed + near)]) from None
     if accuracy is not None:
         if not 1e-10 <= accuracy <= 1e-2:
             raise BadInput([Problem("command line", "--accuracy", str(accuracy), "a number between 1e-10 and 1e-2")])
