@@ -114,6 +114,11 @@ class MeanSpherical(Closure):
     def g_slope(self, gamma: Array, attraction: Array, bridge: Array) -> Array:
         return np.ones_like(gamma)
 
+    def bind(self, attraction: Array, bridge: Array, well: Array, outside: Array) -> BoundClosure:
+        both = well + outside
+        constant = both + well * attraction
+        return BoundClosure(lambda gamma: both * gamma + constant, lambda gamma: np.broadcast_to(both, gamma.shape))
+
 
 class PercusYevick(BoltzmannClosure):
     """g = exp(B) (1 + gamma)."""

@@ -126,7 +126,10 @@ class Equations:
 
         Stability is lost at k = 0 first, which the sine transform's own points leave out.
         """
-        return np.concatenate((self.direct_zero(x)[:, :, None], self.direct_k(x)), axis=-1)
+        rc_r = self.direct_r(x)
+        zero = 4.0 * math.pi * self.grid.spacing * (rc_r @ self.grid.r)
+        self._input[:] = rc_r
+        return np.concatenate((zero[:, :, None], self.transform.forward().reshape(self.shape)), axis=-1)
 
     def definite(self, x: Array) -> Flags:
         """Whether I - C(k) is positive definite at every k, zero included; shape (b,)."""

@@ -15,7 +15,7 @@ from ozsolve.potential import MAX_SIZE_RATIO, Array, PairOverride, PairTable, co
 FRACTION_SUM_TOLERANCE = 1e-9
 MAX_PACKING_FRACTION = 0.55
 MAX_REDUCED_DEPTH = 100.0
-"""Largest |beta eps|; branches of physical solutions end long before."""
+"""Largest beta eps; branches of physical solutions end long before."""
 
 
 class Mixture:
@@ -123,8 +123,8 @@ class Mixture:
             If the temperature is absurdly low for these wells.
         """
         depth = self.pairs.well_depth / state.temperature
-        if np.abs(depth).max() > MAX_REDUCED_DEPTH:
-            lowest = float(np.abs(self.pairs.well_depth).max()) / MAX_REDUCED_DEPTH
+        if depth.max() > MAX_REDUCED_DEPTH:
+            lowest = float(self.pairs.well_depth.max()) / MAX_REDUCED_DEPTH
             raise InputError("temperature", state.temperature, f"must be at least {lowest:.4g} for wells this deep")
         return depth
 

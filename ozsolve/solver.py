@@ -38,6 +38,8 @@ EXTENT = 10.0
 """First extent, in the largest diameter, beyond the longest well."""
 TAIL_SHARE = 0.1
 """Share of the accuracy that cutting correlations may cost before the extent doubles."""
+NO_TAIL = 1e-14
+"""Below this no response short of a divergence makes the tail count."""
 MAX_POINTS = 1 << 15
 MAX_REFINEMENTS = 4
 RESIDUAL_SHARE = 1e-3
@@ -193,9 +195,11 @@ def tail(equations: Equations, x: Array) -> Array:
     """
     tail_start = int(0.9 * equations.shape[2])
     rh = x.reshape(equations.shape)[:, :, tail_start:]
+    image = np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2)
+    if image.max() < NO_TAIL:
+        return image
     lowest = lowest_eigenvalue(equations.direct_zero(x)[:, :, None], equations.root_rho)
-    response = 0.25 + 5.0 / np.maximum(lowest, 1e-6)
-    return np.asarray(np.abs(rh).max(axis=(1, 2)) ** 2 * response)
+    return np.asarray(image * (0.25 + 5.0 / np.maximum(lowest, 1e-6)))
 
 
 def _move(

@@ -108,9 +108,9 @@ class Observables:
 
 TABLES = ("shell_integral", "contact", "inner_edge", "outer_edge", "c_zero", "h_zero")
 NUMBERS = ("energy", "virial", "inverse_compressibility")
-COUNT_SHARE = 0.5
-"""Coordination numbers keep within half of the bound pooled from all numbers (same states: 99 % within
-a third of it)."""
+COUNT_SHARE = 0.6
+"""Coordination numbers keep within this share of the bound pooled from all numbers (same states: 99 %
+within a third of it)."""
 SENSITIVITY = {
     "shell_integral": 1.0,
     "contact": 16.0,

@@ -17,7 +17,7 @@ def edit(key: str, line: str) -> str:
 BOTH = "residual_energy = -5786.0\nheat_of_vaporization = 6437.0"
 
 CASES = {
-    "a state file": (STATE, "[fluid]", ["is missing"]),
+    "a state file": (STATE, "[state]", ["localcomp state"]),
     "fluid a list": (LIQUID.replace("[fluid]", "[[fluid]]"), "[fluid]", ["must be a table"]),
     "no temperature": (without(LIQUID, "temperature"), "[fluid] temperature", ["is missing", "kelvin"]),
     "no volume": (without(LIQUID, "molar_volume"), "[fluid] molar_volume", ["is missing", "cm3/mol"]),

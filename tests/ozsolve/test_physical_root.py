@@ -74,9 +74,10 @@ def test_a_false_root_is_recognised() -> None:
     equations = Equations(fluid, grid, PY)
     rng = np.random.default_rng(4)
     converged = 0
-    for _ in range(6):
+    for _ in range(40):
         size = equations.shape[1] * equations.shape[2]
-        start = rng.uniform(0.0, 3.0) * np.tile(grid.r * np.exp(-grid.r), equations.shape[1])[None, :size]
+        shape = np.tile(grid.r * np.exp(-rng.uniform(0.5, 2.0) * grid.r), equations.shape[1])
+        start = rng.uniform(0.0, 8.0) * shape[None, :size]
         outcome = iterate(equations, start, RULE, Anderson())
         converged += outcome.status is Status.SOLVED
         assert not outcome.good
