@@ -127,10 +127,10 @@ class Store:
                 pass
             raise self._problem(error) from None
 
-    def known(self) -> set[str]:
-        """Keys of all stored states."""
+    def known(self) -> dict[str, str]:
+        """Status of every stored state, by key."""
         try:
-            return {key for (key,) in self._db.execute("SELECT key FROM states")}
+            return dict(self._db.execute("SELECT key, status FROM states"))
         except sqlite3.Error as error:
             raise self._problem(error) from None
 

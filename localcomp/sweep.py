@@ -181,8 +181,13 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
     finally:
         for future in flying:
             future.cancel()
-    solved = sum(result is not None and is_solved(result) for result in store.results(study.keys()))
+    status = store.known()
+    solved = sum(status.get(key) in SOLVED for keys, _ in all_units for key in keys)
     return SweepResult(total, solved, total - solved, computed, time.monotonic() - began)
+
+
+SOLVED = ("solved", "accuracy_not_reached")
+"""Statuses of stored states that have numbers."""
 
 
 def is_solved(result: dict[str, Any]) -> bool:
@@ -190,7 +195,7 @@ def is_solved(result: dict[str, Any]) -> bool:
     return "coordination_numbers" in result
 
 
-def _pending(study: Study, all_units: list[tuple[list[str], list[Case]]], known: set[str]) -> Iterator[Unit]:
+def _pending(study: Study, all_units: list[tuple[list[str], list[Case]]], known: dict[str, str]) -> Iterator[Unit]:
     for keys, cases in all_units:
         missing = [n for n, key in enumerate(keys) if key not in known]
         if missing:

@@ -44,8 +44,8 @@ class Attempt:
     number: int
     coarse: LevelResult
     fine: LevelResult
-    rough: Observables
     sharp: Observables
+    roughness: float
     tail: float
     steps: int
     residual: float
@@ -87,7 +87,7 @@ class Job:
 
     def settle(self, attempt: Attempt) -> None:
         """Make a solution of it, or set it aside for a finer grid."""
-        roughness = ERROR_SHARE * float(attempt.sharp.roughness(attempt.rough))
+        roughness = ERROR_SHARE * attempt.roughness
         floor = RESIDUAL_GAIN * self.rule.tolerance + attempt.tail
         relative_error = COUNT_SHARE * roughness + floor
         if relative_error > self.accuracy:
@@ -191,10 +191,12 @@ def _refine_batch(job: Job, attempts: list[Attempt], new: Grid) -> None:
         if branch[row]:
             fine = job.level(before.number, new, x[row], references[place])
             steps = before.steps + int(found.steps[place])
+            found_sharp = sharp.row(row)
             job.settle(
                 replace(
                     before, coarse=before.fine if finer else before.coarse, fine=fine,
-                    rough=before.sharp if finer else before.rough, sharp=sharp.row(row),
+                    sharp=found_sharp,
+                    roughness=float(found_sharp.roughness(before.sharp)) if finer else before.roughness,
                     tail=float(tails[row]), steps=steps, residual=float(found.residuals[place]),
                     seconds=before.seconds + seconds,
                 )

@@ -258,7 +258,7 @@ def _accept(
     x = second.x[kept]
     branch = on_branch(sharp_equations, x)
     sharp, rough = observe_many(sharp_equations, x), observe_many(rough_equations, first.x[chosen])
-    tails = tail(sharp_equations, x)
+    tails, roughness = tail(sharp_equations, x), sharp.roughness(rough)
     seconds = (time.perf_counter() - began) / len(batch)
     for row, place in enumerate(chosen):
         family, member = batch[place]
@@ -274,8 +274,8 @@ def _accept(
                 number,
                 job.level(number, coarse.grid, first.x[place], family.reference),
                 job.level(number, fine.grid, x[row], family.reference_fine),
-                rough.row(row),
                 sharp.row(row),
+                float(roughness[row]),
                 float(tails[row]),
                 int(first.steps[place] + second.steps[kept[row]]),
                 float(second.residuals[kept[row]]),

@@ -260,7 +260,7 @@ class Solution:
     @property
     def concentration_structure_factor(self) -> Array:
         """S_cc(0) = N <dx_i dx_j>, shape (s, s); [0, 0] is the usual number for two species."""
-        return concentration_fluctuations(self.observables.h_zero, self.fine.equations.fluid.rho[0])
+        return concentration_fluctuations(self.observables.h_zero, self.fine.fluid.rho[0])
 
     def shell_integral(self, radius: Array) -> tuple[Array, Array]:
         """4 pi int_0^L_ij g_ij r^2 dr and its error bar, both (s, s), cubed length unit.
@@ -270,6 +270,9 @@ class Solution:
         radius : ndarray, shape (s, s)
             L_ij in the length unit, symmetric.
         """
+        unit = self.length**3
+        if np.array_equal(radius, self.mixture.pairs.well_edge):  # at hand already
+            return _frozen(self.observables.shell_integral * unit), _frozen(self.errors.shell_integral * unit)
         i, j = np.triu_indices(self.mixture.species)
         limit = np.asarray(radius, dtype=np.float64)[i, j] / self.length
         value = shell_integrals(self.fine.equations, self.fine.x, limit)
@@ -279,7 +282,7 @@ class Solution:
         if self.coarse is not None:
             rough = shell_integrals(self.coarse.equations, self.coarse.x, limit)
             bar = np.maximum(bar, ERROR_SHARE * np.abs(value - rough))
-        return self._table(value * self.length**3), self._table(bar * self.length**3)
+        return self._table(value * unit), self._table(bar * unit)
 
     def running_shell_integral(self, radii: Array) -> Array:
         """The same at many radii common to all pairs, shape (s, s, len(radii)), without error bars."""

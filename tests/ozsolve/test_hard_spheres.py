@@ -33,7 +33,9 @@ def check_contact(row: dict[str, float], solution: Solution, tolerance: float) -
 
 
 def check_compressibility(row: dict[str, float], solution: Solution) -> None:
-    """d(beta P)/d rho and c_ij(0) of the same theory (table computed from the Baxter factor)."""
+    """d(beta P)/d rho, Lebowitz (1964), closed form and table; c_ij(0) of the same theory (Baxter factor)."""
+    closed = exact.py_inverse_compressibility(solution.densities, np.array([1.0, row["ratio"]]))
+    assert solution.inverse_compressibility == pytest.approx(closed, rel=1e-5)
     assert solution.inverse_compressibility == pytest.approx(row["dbPdrho_PYc"], rel=1e-5)
     c_zero = np.array([[row["c11_0"], row["c12_0"]], [row["c12_0"], row["c22_0"]]])
     assert np.max(np.abs(solution.observables.c_zero * solution.length**3 / c_zero - 1.0)) < 1e-5
@@ -65,6 +67,40 @@ def test_the_checks_catch_a_wrong_closure_and_swapped_diameters() -> None:
         check_contact(row, solved(row, swap=True), 1e-5)
     with pytest.raises(AssertionError):
         check_compressibility(row, solved(row, closure="hnc"))
+    with pytest.raises(AssertionError):
+        check_compressibility(row, solved(row, swap=True))
+    with pytest.raises(AssertionError):  # the default accuracy does not pass the tight check
+        check_contact(row, solved(row, accuracy=1e-5), 1e-7)
+
+
+def check_closed_forms(row: dict[str, float], rho: np.ndarray, sigma: np.ndarray) -> None:
+    """Lebowitz (1964), Boublik (1970), Mansoori et al. (1971) as coded, against the table's eight digits."""
+    total = rho.sum()
+    for found, name in ((exact.py_contact_values, "PY"), (exact.bmcsl_contact_values, "BMCSL")):
+        g = found(rho, sigma)
+        table = np.array([row[f"g11_{name}"], row[f"g12_{name}"], row[f"g22_{name}"]])
+        assert np.max(np.abs(g[[0, 0, 1], [0, 1, 1]] / table - 1.0)) < DIGITS
+    for pressure, name in (
+        (exact.py_compressibility_pressure, "Zc_PY"),
+        (exact.py_virial_pressure, "Zv_PY"),
+        (exact.bmcsl_pressure, "Z_BMCSL"),
+    ):
+        assert pressure(rho, sigma) / total == pytest.approx(row[name], rel=DIGITS)
+    assert exact.py_inverse_compressibility(rho, sigma) == pytest.approx(row["dbPdrho_PYc"], rel=DIGITS)
+    root = np.sqrt(rho)
+    c_zero = (np.eye(2) - exact.py_stability_matrix(np.zeros(1), rho, sigma)[0]) / (root[:, None] * root)
+    table = np.array([row["c11_0"], row["c12_0"], row["c22_0"]])
+    assert np.max(np.abs(c_zero[[0, 0, 1], [0, 1, 1]] / table - 1.0)) < DIGITS
+
+
+def test_closed_forms_against_the_table() -> None:
+    for row in MIXTURES:
+        x = np.array([row["x1"], 1.0 - row["x1"]])
+        sigma = np.array([1.0, row["ratio"]])
+        right, swapped = ((x * row["eta"] * 6.0 / np.pi / float(x @ s**3), s) for s in (sigma, sigma[::-1]))
+        check_closed_forms(row, *right)
+        with pytest.raises(AssertionError):
+            check_closed_forms(row, *swapped)
 
 
 @pytest.mark.parametrize("closure", ["py", "msa", "rhnc"])
@@ -75,11 +111,14 @@ def test_hard_spheres_are_the_same_in_py_msa_and_rhnc(closure: str) -> None:
 
 
 def check_direct_correlation(eta: float, solution: Solution) -> None:
-    """c(r) polynomial: Wertheim (1963), Thiele (1963). Away from the kinks at the step itself."""
+    """c(r) polynomial: Wertheim (1963), Thiele (1963). In the core c = -1 - gamma, so this is also where
+    g = 0 shows. The filter rounds the kink at the step, which limits the points next to it and, by its
+    mirror image, next to the origin."""
     r = solution.r
-    window = (r > 0.2) & (np.abs(r - 1.0) > 0.1) & (r < 3.0)
     closed = exact.py_direct_correlation(r, eta)
-    assert np.max(np.abs(solution.c_r[0, 0] - closed)[window]) < 2e-4 * np.abs(closed).max()
+    error = np.abs(solution.c_r[0, 0] - closed) / np.abs(closed).max()
+    for gap, tolerance in ((0.02, 1e-3), (0.05, 2e-5), (0.1, 1e-6), (0.2, 1e-7)):
+        assert np.max(error[(r > gap) & (np.abs(r - 1.0) > gap) & (r < 3.0)]) < tolerance, gap
 
 
 @pytest.mark.parametrize("eta", [0.1, 0.3, 0.45])
@@ -91,7 +130,8 @@ def test_one_component_direct_correlation(eta: float) -> None:
         check_direct_correlation(eta, wrong)
 
 
-def test_g_is_zero_inside_the_core_and_the_core_condition_holds() -> None:
+def test_arrays_keep_the_core_condition() -> None:
+    """By construction; that the relation itself gives g = 0 there is in test_core_condition.py."""
     solution = solve(Mixture([1.0, 1.5], [1.0, 1.5]), State(2.0, (0.5, 0.5), packing_fraction=0.4))
     for i in range(2):
         for j in range(2):
