@@ -241,7 +241,7 @@ def _numbers(report: StateReport) -> dict[str, Any]:
 def clean(value: Any) -> Any:
     """Arrays to lists, numbers that are not finite to None."""
     if isinstance(value, np.ndarray):
-        return clean(value.tolist())
+        return value.tolist() if np.isfinite(value).all() else clean(value.tolist())
     if isinstance(value, dict):
         return {key: clean(item) for key, item in value.items()}
     if isinstance(value, list | tuple):

@@ -69,9 +69,10 @@ class SweepResult:
 def units(study: Study) -> list[tuple[list[str], list[Case]]]:
     """Keys and cases of every work unit, fixed by the study alone."""
     keyed = list(zip(study.keys(), study.cases, strict=True))
-    order = sorted(range(len(keyed)), key=lambda n: (_family(keyed[n][1]), n))
+    families = [_family(case) for case in study.cases]
+    order = sorted(range(len(keyed)), key=lambda n: (families[n], n))
     out: list[tuple[list[str], list[Case]]] = []
-    for _, numbers in itertools.groupby(order, key=lambda n: _family(keyed[n][1])):
+    for _, numbers in itertools.groupby(order, key=lambda n: families[n]):
         members = list(numbers)
         for start in range(0, len(members), UNIT_SIZE):
             part = members[start : start + UNIT_SIZE]
