@@ -22,6 +22,22 @@ PROBLEMS = {
 }
 
 
+def random_states(count: int, seed: int) -> Iterator[tuple[Mixture, State, str]]:
+    """Anything the door lets in: gases to dense and very cold fluids, one to four species, absent ones, shoulders."""
+    rng = np.random.default_rng(seed)
+    names = list(CLOSURES)
+    for n in range(count):
+        species = int(rng.integers(1, 5))
+        sigma = np.concatenate(([1.0], rng.uniform(1.0, 4.0, species - 1)))
+        depth = rng.uniform(0.0, 2.0, species) * (-1.0 if rng.random() < 0.25 else 1.0)
+        x = rng.dirichlet(np.ones(species))
+        if species > 1 and rng.random() < 0.3:
+            x[0] = 0.0
+        mixture = Mixture(sigma, depth, rng.uniform(1.05, 2.2), k=float(rng.uniform(-0.4, 0.4)))
+        temperature, eta = float(np.exp(rng.uniform(np.log(0.15), np.log(4.0)))), float(rng.uniform(0.005, 0.54))
+        yield mixture, State(temperature, tuple(x / x.sum()), packing_fraction=eta), names[n % len(names)]
+
+
 def random_liquids(count: int, seed: int) -> Iterator[tuple[Mixture, State, str]]:
     """Two to three species, eta 0.2-0.45, size ratio up to 2, all closures in turn."""
     rng = np.random.default_rng(seed)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import copy
+
 import numpy as np
 import pytest
 from scipy.optimize import newton_krylov
@@ -91,6 +93,36 @@ def test_anderson_keeps_its_secant_promise() -> None:
     assert np.max(np.abs(y @ a.T + b - y)) > 1e-6  # a memory of one is not enough
 
 
+def check_secant(shift_image: np.ndarray, shift_residual: np.ndarray) -> None:
+    """The step's implied inverse Jacobian H obeys H dF_j = dX_j for every remembered pair (Walker and Ni 2011):
+    moving the point along a remembered difference does not change where the step lands."""
+    rng = np.random.default_rng(21)
+    stepper = Anderson(5)
+    moves = rng.normal(size=(4, 1, 12))
+    images = rng.normal(size=(4, 1, 12))
+    history = stepper.start(moves[0])
+    for x, image in zip(moves[:3], images[:3], strict=True):
+        stepper.step(image, image - x, history)
+    again = copy.deepcopy(history)
+    image, residual = images[3], images[3] - moves[3]
+    landed = stepper.step(image, residual, history)
+    moved = stepper.step(image + shift_image, residual + shift_residual, again)
+    assert np.max(np.abs(landed - moved)) < 1e-8
+
+
+def test_anderson_keeps_the_secant_condition_and_promises_no_more() -> None:
+    rng = np.random.default_rng(21)
+    moves, images = rng.normal(size=(4, 1, 12)), rng.normal(size=(4, 1, 12))
+    for j in range(2):
+        d_image, d_move = images[j + 1] - images[j], moves[j + 1] - moves[j]
+        check_secant(d_image, d_image - d_move)
+        with pytest.raises(AssertionError):
+            check_secant(1.01 * d_image, d_image - d_move)
+    fresh = np.random.default_rng(5).normal(size=(2, 1, 12))
+    with pytest.raises(AssertionError):
+        check_secant(fresh[0], fresh[1])
+
+
 def test_recycled_pairs_solve_the_linear_problem_they_came_from() -> None:
     rng = np.random.default_rng(8)
     a = rng.normal(size=(20, 3)) @ rng.normal(size=(3, 20)) / 6
@@ -143,11 +175,14 @@ def test_every_method_reaches_the_same_root(name: str, closure: str) -> None:
     assert len(two.residuals) <= len(one.residuals)  # Newton's steps are fewer (and dearer)
 
 
-def test_scipy_reaches_the_same_root() -> None:
-    system, start = equations("unlike", "rhnc", 192)
+@pytest.mark.parametrize("closure", list(CLOSURES))
+@pytest.mark.parametrize("name", ["one component", "unlike", "ternary", "shoulder"])
+def test_scipy_reaches_the_same_root(name: str, closure: str) -> None:
+    system, start = equations(name, closure, 192)
     ours = iterate(system, start, RULE, Anderson()).x
     theirs = newton_krylov(lambda y: system.apply(y)[0] - y, start, f_tol=1e-9)
     assert np.max(np.abs(ours - theirs)) < 1e-6
+    assert np.max(np.abs(start - theirs)) > 1e-3  # the start is not the answer
 
 
 def test_picard_reaches_the_same_root() -> None:

@@ -12,6 +12,7 @@ from ozsolve.continuation import Stride, follow
 from ozsolve.equations import Equations
 from ozsolve.iteration import iterate
 from ozsolve.newton import largest_real_eigenvalue
+from ozsolve.oz import pair_index
 from ozsolve.root import bridge_function
 from ozsolve.solution import reduced_fluid
 from ozsolve.stopping import StoppingRule
@@ -28,6 +29,14 @@ def check_physical(solution: Solution) -> None:
     assert np.linalg.eigvalsh(full).min() > 0.0
 
 
+def check_definite(equations: Equations, x: np.ndarray) -> None:
+    """I - C(k) positive definite at every k, by numpy's eigenvalues."""
+    rho = equations.fluid.rho[0]
+    root = np.sqrt(rho)
+    c = np.moveaxis(equations.direct_from_zero(x)[0][np.array(pair_index(len(rho)))], -1, 0)
+    assert np.linalg.eigvalsh(np.eye(len(rho)) - root[:, None] * root * c).min() > 0.0
+
+
 @pytest.mark.parametrize("closure", list(CLOSURES))
 @pytest.mark.parametrize("x", FRACTIONS)
 @pytest.mark.parametrize(
@@ -36,19 +45,25 @@ def check_physical(solution: Solution) -> None:
     ids=["energies", "sizes"],
 )
 def test_all_closures_reach_a_physical_root(closure: str, x: float, mixture: Mixture, temperature: float) -> None:
-    check_physical(solve(mixture, State(temperature, (x, 1.0 - x), packing_fraction=0.40), closure=closure))
+    solution = solve(mixture, State(temperature, (x, 1.0 - x), packing_fraction=0.40), closure=closure)
+    check_physical(solution)
+    check_definite(solution.fine.equations, solution.fine.x)
 
 
 DEMIXING = Mixture([1.0, 1.0], [1.0, 1.0], k=0.2)
 COLD = State(1.0, (0.5, 0.5), packing_fraction=0.40)
 
 
-def test_msa_ratio_near_demixing() -> None:
-    """R_12 = 0.858 (own calculation, independent of this program)."""
-    k = solve(DEMIXING, COLD, closure="msa").observables.shell_integral
+def check_ratio(closure: str) -> None:
+    """R_12 = N_12 x_1/(N_11 x_2) = 0.858 in MSA (own calculation, independent of this program)."""
+    k = solve(DEMIXING, COLD, closure=closure).observables.shell_integral
     assert k[0, 1] / k[0, 0] == pytest.approx(0.858, abs=1e-3)
-    other = solve(DEMIXING, COLD, closure="rhnc").observables.shell_integral
-    assert other[0, 1] / other[0, 0] != pytest.approx(0.858, abs=1e-3)
+
+
+def test_msa_ratio_near_demixing() -> None:
+    check_ratio("msa")
+    with pytest.raises(AssertionError):
+        check_ratio("rhnc")
 
 
 def test_py_says_where_its_branch_ends() -> None:
@@ -81,6 +96,9 @@ def test_a_false_root_is_recognised() -> None:
         outcome = iterate(equations, start, RULE, Anderson())
         converged += outcome.status is Status.SOLVED
         assert not outcome.good
+        if outcome.status is Status.SOLVED:
+            with pytest.raises(AssertionError):
+                check_definite(equations, outcome.x)
     assert converged > 0, "no start converged: the test has lost its subject"
 
 
