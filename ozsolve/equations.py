@@ -16,7 +16,7 @@ import numpy as np
 
 from ozsolve.closures import BoundClosure, Closure
 from ozsolve.grid import Grid, indicators
-from ozsolve.oz import eigenvalues_above, indirect, indirect_response, pair_index
+from ozsolve.oz import eigenvalues_above, indirect, indirect_response, pair_positions
 from ozsolve.potential import Array, Flags, Indices
 from ozsolve.transform import plan
 
@@ -102,7 +102,7 @@ class Equations:
 
     def pair_table(self, pairs: Array) -> Array:
         """Symmetric (..., s, s) tables from values (..., pairs), i <= j."""
-        return np.asarray(pairs[..., np.array(pair_index(self.fluid.rho.shape[-1]))])
+        return np.asarray(pairs[..., pair_positions(self.fluid.rho.shape[-1])])
 
     def direct_r(self, x: Array) -> Array:
         """r times the segment-weighted c(r), shape (b, pairs, m)."""

@@ -17,7 +17,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from ozsolve.potential import Array, Flags
+from ozsolve.potential import Array, Flags, Indices
 
 
 @lru_cache(maxsize=16)
@@ -32,9 +32,17 @@ def pair_index(species: int) -> tuple[tuple[int, ...], ...]:
     return tuple(tuple(row) for row in table)
 
 
+@lru_cache(maxsize=16)
+def pair_positions(species: int) -> Indices:
+    """`pair_index` as a read-only array."""
+    positions = np.array(pair_index(species))
+    positions.setflags(write=False)
+    return positions
+
+
 def unpack(pairs: Array, species: int) -> Array:
     """From (..., pairs, m) to (..., s, s, m)."""
-    return pairs[..., np.array(pair_index(species)), :]
+    return pairs[..., pair_positions(species), :]
 
 
 def pack(table: Array) -> Array:

@@ -148,7 +148,7 @@ def observe_many(equations: Equations, x: Array) -> Observables:
     with np.errstate(over="ignore"):  # deep inside the core, where the weights vanish
         inside = equations.closure.g(gamma, fluid.attraction[:, :, None], equations.bridge)
         inside = np.where(equations.well != 0.0, inside, 0.0)
-    shell = table(4.0 * math.pi * grid.spacing * np.einsum("bpm,bpm,m->bp", equations.well, inside, grid.r**2))
+    shell = table(4.0 * math.pi * grid.spacing * ((equations.well * inside) @ grid.r**2))
     contact, inner, outer = (table(row) for row in edge_values(equations, gamma))
     c_zero = table(equations.direct_zero(x))
     rho = fluid.rho

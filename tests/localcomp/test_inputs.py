@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import os
 import random
 import subprocess
 from pathlib import Path
@@ -209,11 +208,3 @@ def test_real_units(tmp_path: Path) -> None:
     )
     assert Units("angstrom", "kelvin").energy_out(100.0) == pytest.approx(831.446261815324)
     assert Units().energy_out(100.0) == 100.0
-
-
-@pytest.mark.skipif(os.geteuid() == 0, reason="root reads everything")
-def test_an_unreadable_file(tmp_path: Path) -> None:
-    path = written(tmp_path, GOOD)
-    path.chmod(0)
-    with pytest.raises(BadInput, match="cannot be read"):
-        read_state(path)
