@@ -6,7 +6,7 @@ import time
 from dataclasses import dataclass
 
 from localcomp.study import Study
-from localcomp.sweep import Unit, is_solved, units, work
+from localcomp.sweep import SOLVED, Unit, units, work
 
 TRIAL_SECONDS = 2.0
 STARTUP_SECONDS = 1.0
@@ -43,7 +43,7 @@ def estimate(study: Study, workers: int) -> Estimate:
         rows = work(unit)
         seconds += time.perf_counter() - began
         tried += len(rows)
-        failed += sum(not is_solved(result) for _, result in rows)
+        failed += sum(status not in SOLVED for _, status, _ in rows)
         if seconds > TRIAL_SECONDS:
             break
     total = len(study.cases)

@@ -33,6 +33,15 @@ CREATE TABLE notes (
 """
 
 
+Row = tuple[str, str, str]
+"""Key, status, result as text."""
+
+
+def row_of(key: str, result: dict[str, Any]) -> Row:
+    """What is stored of a result (a dictionary of plain values with a "status")."""
+    return key, str(result["status"]), json.dumps(result, allow_nan=False)
+
+
 class StoreError(LocalcompError):
     """The store cannot be used or written; the message says why and what is safe."""
 
@@ -106,18 +115,17 @@ class Store:
             )
         return StoreError(f"{self.path}: {text}; what was stored is safe")
 
-    def add(self, rows: Iterable[tuple[str, dict[str, Any]]]) -> None:
-        """Store results (key, result with a "status") in one transaction; present keys stay as they are.
+    def add(self, rows: Iterable[Row]) -> None:
+        """Store results in one transaction; present keys stay as they are.
 
         Raises
         ------
         StoreError
             If they could not be written (full disk, lost file, ...); nothing stored before is lost.
         """
-        prepared = [(key, str(result["status"]), json.dumps(result, allow_nan=False)) for key, result in rows]
         try:
             self._db.execute("BEGIN IMMEDIATE")
-            self._db.executemany("INSERT OR IGNORE INTO states VALUES (?, ?, ?)", prepared)
+            self._db.executemany("INSERT OR IGNORE INTO states VALUES (?, ?, ?)", rows)
             self._db.execute("COMMIT")
         except sqlite3.Error as error:
             try:

@@ -19,12 +19,13 @@ from localcomp.errors import LocalcompError, NoAnswer
 from localcomp.neighbors import count_neighbors
 from localcomp.report import clean
 from localcomp.shells import ShellRule
-from localcomp.store import Store
+from localcomp.store import Row, Store, row_of
 from localcomp.study import Case, Study
 from ozsolve import Mixture, Solution, State, solve_many
 
-UNIT_SIZE = 128
-"""States in a work unit, families kept whole where they fit: about a tenth of a second of work."""
+UNIT_SIZE = 64
+"""States in a work unit, families kept whole where they fit: about a tenth of a second of work. Larger
+ones are no faster and leave workers idle at the end."""
 AHEAD = 3
 """Units in flight per worker: enough to keep all busy, few enough to lose little."""
 
@@ -91,10 +92,10 @@ def _family(case: Case) -> tuple[str, tuple[float, ...], tuple[float, ...]]:
     return case.closure, (*np.ravel(pairs.diameter), *np.ravel(pairs.well_edge)), tuple(rho)
 
 
-def work(unit: Unit) -> list[tuple[str, dict[str, Any]]]:
+def work(unit: Unit) -> list[Row]:
     """Solve a unit: what a worker runs."""
     solutions = solve_many(unit.cases, closure=unit.closure, accuracy=unit.accuracy)
-    return [(key, result_of(solution, unit.rule)) for key, solution in zip(unit.keys, solutions, strict=True)]
+    return [row_of(key, result_of(solution, unit.rule)) for key, solution in zip(unit.keys, solutions, strict=True)]
 
 
 def result_of(solution: Solution, rule: ShellRule) -> dict[str, Any]:
@@ -176,7 +177,7 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
                 store.add(rows)
                 computed += len(rows)
                 present += len(rows)
-                failed += sum(not is_solved(result) for _, result in rows)
+                failed += sum(status not in SOLVED for _, status, _ in rows)
                 if progress is not None:
                     progress(present, total, failed)
     finally:

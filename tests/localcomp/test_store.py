@@ -7,11 +7,11 @@ from pathlib import Path
 
 import pytest
 
-from localcomp.store import Store, StoreError
+from localcomp.store import Row, Store, StoreError, row_of
 
 
-def rows(first: int, last: int) -> list[tuple[str, dict[str, object]]]:
-    return [(f"key{n}", {"status": "solved", "number": n}) for n in range(first, last)]
+def rows(first: int, last: int) -> list[Row]:
+    return [row_of(f"key{n}", {"status": "solved", "number": n}) for n in range(first, last)]
 
 
 def test_what_was_added_is_read_back_in_order(tmp_path: Path) -> None:
@@ -24,8 +24,8 @@ def test_what_was_added_is_read_back_in_order(tmp_path: Path) -> None:
 
 def test_a_present_key_stays_as_it_is(tmp_path: Path) -> None:
     with Store(tmp_path / "s.sqlite") as store:
-        store.add([("a", {"status": "solved", "number": 1})])
-        store.add([("a", {"status": "solved", "number": 2})])
+        store.add([row_of("a", {"status": "solved", "number": 1})])
+        store.add([row_of("a", {"status": "solved", "number": 2})])
         assert list(store.results(["a"])) == [{"status": "solved", "number": 1}]
 
 
