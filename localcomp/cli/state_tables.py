@@ -119,7 +119,8 @@ def _statements(out: Console, report: StateReport) -> None:
     for start in range(0, len(pairs), 2):
         chosen = pairs[start : start + 2]
         heads = [head for i, j in chosen for head in (f"R {names[i]} <- {names[j]}", "stated/found")]
-        made = table("\nWhat models state for these energies" if start == 0 else "", "model (energy reading)", *heads)
+        title = "\nWhat models state for these energies" + (", continued" if start else "")
+        made = table(title, "model (energy reading)", *heads)
         made.add_row("found", *[cell for i, j in chosen for cell in (plain(found.neighbor_ratios[i, j]), "")])
         for s in report.statements:
             cells = [cell for i, j in chosen for cell in (plain(s.stated[i, j]), plain(s.off[i, j], 3))]

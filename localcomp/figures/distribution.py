@@ -88,12 +88,19 @@ def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
         (count_line,) = right.plot(curve.radii, values, color=color, lw=1.4, ls=dash, label=label)
         handles.append(count_line)
         right.plot([curve.shell], [in_shell], "o", ms=4, color=color)
-        offset = (6, -10) if in_shell <= counts[n - 1][2] else (6, 6)
         if n == 0 or abs(in_shell - counts[0][2]) > 0.005:
+            upper = n == 0 and len(counts) > 1 and in_shell > counts[1][2]
             right.annotate(
-                f"{in_shell:.2f}", (curve.shell, in_shell), xytext=offset, textcoords="offset points", color=color,
+                f"{in_shell:.2f}",
+                (curve.shell, in_shell),
+                xytext=(-6, 5) if upper else (7, -10),
+                ha="right" if upper else "left",
+                textcoords="offset points",
+                color=color,
                 fontsize=8,
-            )  # fmt: skip
+                bbox={"boxstyle": "square,pad=0.1", "facecolor": "white", "edgecolor": "none", "alpha": 0.8},
+                zorder=5,
+            )
     right.set_ylim(0.0, 2.6 * max(item[2] for item in counts) or 1.0)
     right.set_ylabel("neighbours within r")
     axis.set_title(f"{center} - {neighbor}", pad=44)
