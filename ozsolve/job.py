@@ -167,15 +167,18 @@ def _refine_batch(job: Job, attempts: list[Attempt], new: Grid) -> None:
     finer = new.spacing < old.spacing
     fluid = stack([attempt.fine.fluid for attempt in attempts])
     pairs = fluid.core.shape[1]
-    references = regrid(np.concatenate([a.fine.reference for a in attempts]), pairs, old, new)
-    good = np.ones(len(attempts), bool)
+    same = np.concatenate((fluid.rho, fluid.core), axis=1)  # states with one hard-sphere reference
+    _, chosen, member = np.unique(same, axis=0, return_index=True, return_inverse=True)
+    references = regrid(np.concatenate([attempts[n].fine.reference for n in chosen]), pairs, old, new)
+    good = np.ones(len(chosen), bool)
     bridge = None
     if job.closure.needs_reference:
-        hard = Equations(fluid.scaled(attraction=0.0), new, PY)
+        hard = Equations(stack([attempts[n].fine.fluid for n in chosen]).scaled(attraction=0.0), new, PY)
         solved = iterate_many(hard, references, job.rule, job.stepper)
         references, good = solved.x, solved.good
         with np.errstate(all="ignore"):
-            bridge = bridge_function(references, hard)
+            bridge = bridge_function(references, hard)[member]
+    references, good = references[member], good[member]
     equations = Equations(fluid, new, job.closure, bridge)
     start = regrid(np.concatenate([a.fine.x for a in attempts]), pairs, old, new)
     found = iterate_many(equations, start, job.rule, job.stepper)

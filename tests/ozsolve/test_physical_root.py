@@ -102,7 +102,7 @@ def test_a_false_root_is_recognised() -> None:
     assert converged > 0, "no start converged: the test has lost its subject"
 
 
-@pytest.mark.parametrize("case", list(random_liquids(16, seed=77)), ids=lambda c: c[2])
+@pytest.mark.parametrize("case", list(random_liquids(32, seed=77)), ids=lambda c: c[2])
 def test_fine_continuation_from_hard_spheres_gives_the_same_root(case: tuple[Mixture, State, str]) -> None:
     mixture, state, name = case
     solution = solve(mixture, state, closure=name, on_failure="return")
