@@ -19,8 +19,7 @@ from numpy.typing import NDArray
 from localcomp.energyroute import EnergyRoute, energy_route
 from localcomp.errors import NoAnswer
 from localcomp.inputs import StateFile
-from localcomp.models import MODELS, Statement, StatementInput
-from localcomp.models.base import compare
+from localcomp.models import LATTICE_COORDINATION, TABLE_MODELS, ModelInput, Statement, compare
 from localcomp.neighbors import Neighbors, ShellSensitivity, count_neighbors, shell_sensitivity
 from localcomp.shells import FixedMultiple
 from localcomp.units import AVOGADRO_A3_PER_CM3, GAS_CONSTANT
@@ -105,7 +104,7 @@ def report_state(request: StateFile) -> StateReport:
     except NoAnswer as reason:
         return StateReport(request, solution, shell_reason=str(reason))
     multiple = request.rule.multiple if isinstance(request.rule, FixedMultiple) else 1.5
-    statements = compare(neighbors.neighbor_ratios, StatementInput.of(request.mixture, request.state), MODELS)
+    statements = compare(neighbors.neighbor_ratios, ModelInput.of(request.mixture, request.state), TABLE_MODELS)
     route: EnergyRoute | None = None
     reason_text = ""
     try:
@@ -220,8 +219,8 @@ def _numbers(report: StateReport) -> dict[str, Any]:
         "statements": [
             {
                 "model": s.model.label,
-                "reading": s.reading.label,
-                "contacts": s.reading.contacts,
+                "reading": s.reading.label(LATTICE_COORDINATION),
+                "contacts": s.contacts,
                 "neighbor_ratios": s.stated,
                 "stated_over_found": s.off,
                 "source": s.model.source,
@@ -255,7 +254,9 @@ def as_csv(reports: list[StateReport]) -> str:
     """One row per closure and pair, full precision; the first row names the columns."""
     buffer = io.StringIO()
     writer = csv.writer(buffer, lineterminator="\n")
-    models = [f"{s.model.label}; {s.reading.label}" for r in reports if r.usable for s in r.statements]
+    models = [
+        f"{s.model.label}; {s.reading.label(LATTICE_COORDINATION)}" for r in reports if r.usable for s in r.statements
+    ]
     labels = list(dict.fromkeys(models))
     columns = [
         "closure", "status", "center", "neighbor", "shell_radius", "coordination_number",

@@ -9,6 +9,7 @@ from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
+from localcomp.models import LATTICE_COORDINATION
 from localcomp.report import CAUTION, StateReport, pressure_mpa
 
 WIDTH = 100
@@ -124,7 +125,7 @@ def _statements(out: Console, report: StateReport) -> None:
         made.add_row("found", *[cell for i, j in chosen for cell in (plain(found.neighbor_ratios[i, j]), "")])
         for s in report.statements:
             cells = [cell for i, j in chosen for cell in (plain(s.stated[i, j]), plain(s.off[i, j], 3))]
-            made.add_row(f"{s.model.label} ({s.reading.label})", *cells)
+            made.add_row(f"{s.model.label} ({s.reading.label(LATTICE_COORDINATION)})", *cells)
         put(out, made)
     out.print(
         "Reading: the energy a parameter stands for, one contact (m = 1) or all contacts of a molecule (m = z/2, "

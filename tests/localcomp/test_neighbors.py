@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 
 from localcomp.errors import NoAnswer
-from localcomp.models import MODELS, Nrtl, QuasiChemical, StatementInput, Wilson
-from localcomp.models.base import compare, readings
+from localcomp.models import TABLE_MODELS, ModelInput, Nrtl, QuasiChemical, Wilson, compare
+from localcomp.models.base import BOTH
 from localcomp.models.quasichemical import contact_factors
 from localcomp.neighbors import count_neighbors, shell_sensitivity
 from localcomp.shells import FirstMinimum, FixedMultiple, WellEdge
@@ -119,12 +119,12 @@ def test_a_failed_solution_has_no_neighbours() -> None:
         count_neighbors(cold)
 
 
-GIVEN = StatementInput(np.array([[0.5, 0.7], [0.7, 1.2]]), np.array([1.0, 1.5]), np.array([0.3, 0.7]))
+GIVEN = ModelInput(np.array([[0.5, 0.7], [0.7, 1.2]]), np.array([1.0, 1.5]), np.array([0.3, 0.7]))
 
 
 def test_wilson_and_nrtl_statements() -> None:
     """Wilson, J. Am. Chem. Soc. 86 (1964) 127; Renon and Prausnitz, AIChE J. 14 (1968) 135."""
-    one, all_contacts = readings()
+    one, all_contacts = BOTH
     assert Wilson().ratios(GIVEN, one)[0, 1] == pytest.approx(np.exp(0.2))
     assert Wilson().ratios(GIVEN, all_contacts)[1, 0] == pytest.approx(np.exp(5 * -0.5))
     assert Nrtl(0.3).ratios(GIVEN, one)[0, 1] == pytest.approx(np.exp(0.06))
@@ -134,7 +134,7 @@ def test_wilson_and_nrtl_statements() -> None:
 def quasi_chemical_pairs(x: float, w_over_zkt: float) -> float:
     """Fraction of neighbours of a 1 that are 2, from our own R_12, equal sizes."""
     depth = np.array([[0.0, -w_over_zkt], [-w_over_zkt, 0.0]])
-    ratio = QuasiChemical().ratios(StatementInput(depth, np.ones(2), np.array([x, 1 - x])), readings()[0])[0, 1]
+    ratio = QuasiChemical().ratios(ModelInput(depth, np.ones(2), np.array([x, 1 - x])), BOTH[0])[0, 1]
     return float(ratio * (1 - x) / (x + ratio * (1 - x)))
 
 
@@ -152,8 +152,8 @@ def test_quasi_chemical_invariant() -> None:
     """R_12 R_21 = exp[beta (2 eps_12 - eps_11 - eps_22)], whatever composition and sizes."""
     for x in (0.05, 0.5, 0.95):
         for size in (1.0, 2.0):
-            given = StatementInput(GIVEN.reduced_depth, np.array([1.0, size]), np.array([x, 1 - x]))
-            ratios = QuasiChemical().ratios(given, readings()[0])
+            given = ModelInput(GIVEN.reduced_depth, np.array([1.0, size]), np.array([x, 1 - x]))
+            ratios = QuasiChemical().ratios(given, BOTH[0])
             assert ratios[0, 1] * ratios[1, 0] == pytest.approx(np.exp(2 * 0.7 - 0.5 - 1.2), rel=1e-10)
 
 
@@ -170,8 +170,8 @@ def test_quasi_chemical_pair_balance_for_three_species() -> None:
 
 def test_the_comparison_shows_both_readings_and_the_factor() -> None:
     found = count_neighbors(solution()).neighbor_ratios
-    table = compare(found, StatementInput.of(*PROBLEMS["unlike"]), MODELS)
-    assert [s.reading.contacts for s in table] == [1.0, 5.0, 1.0, 5.0, 1.0]
+    table = compare(found, ModelInput.of(*PROBLEMS["unlike"]), TABLE_MODELS)
+    assert [s.contacts for s in table] == [1.0, 5.0, 1.0, 5.0, 1.0, 5.0]
     for s in table:
         assert np.allclose(s.off * found, s.stated)
         assert np.allclose(np.diag(s.stated), 1.0)

@@ -5,27 +5,26 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from localcomp.models import Nrtl, QuasiChemical, StatementInput, StatementModel, Wilson
-from localcomp.models.base import compare, readings
+from localcomp.models import ActivityModel, ModelInput, Nrtl, QuasiChemical, Reading, Wilson, compare
 from localcomp.models.quasichemical import LARGEST_EXPONENT, contact_factors
 from tests.readers import numbers, read
 
-ONE_CONTACT = readings()[0]
+ONE_CONTACT = Reading.ONE_CONTACT
 ROWS = [numbers(row) for row in read("quasichemical_binary")]
 
 
-def local_fractions(model: StatementModel, given: StatementInput) -> np.ndarray:
+def local_fractions(model: ActivityModel, given: ModelInput) -> np.ndarray:
     """X_ij = x_j R_ij/sum_k x_k R_ik as the model states it, row = centre."""
     weights = given.mole_fractions[None, :] * model.ratios(given, ONE_CONTACT)
     return weights / weights.sum(axis=1, keepdims=True)
 
 
-def binary(row: dict[str, float]) -> StatementInput:
+def binary(row: dict[str, float]) -> ModelInput:
     """Equal sizes with w = z [e12 - (e11 + e22)/2]; contact energies e are minus our depths."""
     own = np.array([1.0, 2.3])
     unlike = own.mean() - row["w_over_kT"] / row["z"]
     depth = np.array([[own[0], unlike], [unlike, own[1]]])
-    return StatementInput(depth, np.ones(2), np.array([row["x1"], 1.0 - row["x1"]]))
+    return ModelInput(depth, np.ones(2), np.array([row["x1"], 1.0 - row["x1"]]))
 
 
 @pytest.mark.parametrize("row", ROWS, ids=lambda row: f"z{row['z']:g} w{row['w_over_kT']:g} x{row['x1']:g}")
@@ -43,13 +42,13 @@ def test_other_models_fail_the_closed_form(model):
     assert abs(found[0, 1] - row["x21loc"]) > 0.02
 
 
-def random_input(rng: np.random.Generator, species: int, strength: float = 1.5) -> StatementInput:
+def random_input(rng: np.random.Generator, species: int, strength: float = 1.5) -> ModelInput:
     depth = rng.uniform(-strength, strength, (species, species))
     fractions = rng.dirichlet(np.ones(species))
-    return StatementInput(depth + depth.T, rng.uniform(0.7, 2.0, species), fractions)
+    return ModelInput(depth + depth.T, rng.uniform(0.7, 2.0, species), fractions)
 
 
-def pair_gap(model: StatementModel, given: StatementInput) -> float:
+def pair_gap(model: ActivityModel, given: ModelInput) -> float:
     """Largest relative difference between the contacts counted from both ends: q_i x_i X_ij and q_j x_j X_ji."""
     pairs = (given.diameter**2 * given.mole_fractions)[:, None] * local_fractions(model, given)
     return float(np.max(np.abs(pairs - pairs.T) / np.maximum(pairs, pairs.T)))
@@ -79,7 +78,7 @@ def test_invariant_is_free_of_composition_and_size():
 
 
 def test_no_energy_differences_leave_the_surfaces():
-    given = StatementInput(np.full((3, 3), 0.8), np.array([1.0, 1.5, 2.0]), np.array([0.2, 0.3, 0.5]))
+    given = ModelInput(np.full((3, 3), 0.8), np.array([1.0, 1.5, 2.0]), np.array([0.2, 0.3, 0.5]))
     surface = given.diameter**2
     assert QuasiChemical().ratios(given, ONE_CONTACT) == pytest.approx(surface[None, :] / surface[:, None])
     assert Wilson().ratios(given, ONE_CONTACT) == pytest.approx(1.0)
@@ -105,16 +104,16 @@ def test_contact_factors_are_found_whatever_the_energies(strength):
 
 def test_beyond_floating_point_there_is_no_number_and_no_warning():
     high = -1000.0 * np.eye(2) - 400.0 * (1.0 - np.eye(2))
-    given = StatementInput(high, np.ones(2), np.array([0.5, 0.5]))
+    given = ModelInput(high, np.ones(2), np.array([0.5, 0.5]))
     table = compare(np.ones((2, 2)), given, (Wilson(), QuasiChemical()))
     assert np.isnan(table[-1].stated).all()
     assert np.isinf(table[1].stated[0, 1]), "Wilson with all contacts states more than a float can hold"
 
 
 def test_readings_and_sources_are_given():
-    one, all_contacts = readings(10.0)
+    one, all_contacts = Reading
     given = random_input(np.random.default_rng(1), 3, 0.3)
-    assert (one.contacts, all_contacts.contacts) == (1.0, 5.0)
+    assert (one.contacts(10.0), all_contacts.contacts(10.0)) == (1.0, 5.0)
     assert Wilson().ratios(given, all_contacts) == pytest.approx(Wilson().ratios(given, one) ** 5, rel=1e-12)
     assert Nrtl(1.0).ratios(given, one) == pytest.approx(Wilson().ratios(given, one), rel=1e-15)
     for model, author in ((Wilson(), "Wilson"), (Nrtl(), "Renon"), (QuasiChemical(), "Guggenheim")):

@@ -47,7 +47,7 @@ def test_csv_reads_back_exactly(text, write):
         "neighbor_ratio_error": found.ratio_errors,
         "contact_value": report.solution.contact_values,
         "contact_value_error": report.solution.errors.contact,
-        **{f"stated ratio: {s.model.label}; {s.reading.label}": s.stated for s in report.statements},
+        **{f"stated ratio: {s.model.label}; {s.reading.label(10.0)}": s.stated for s in report.statements},
     }
     assert set(rows[0]) == set(tables) | set(COLUMNS[:4])
     for row in rows:
