@@ -11,12 +11,13 @@ import itertools
 import json
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any, TypeGuard
 
 import numpy as np
 
+from localcomp.auditsettings import AuditSettings, read_audit
 from localcomp.errors import BadInput, Problem
 from localcomp.inputs import MAX_PACKING, not_this_kind, read_accuracy, read_mixture, read_shell, read_units
 from localcomp.shells import FixedMultiple, ShellRule
@@ -89,6 +90,8 @@ class Study:
         In a fixed order: closure, mixture, packing fraction, composition, temperature.
     text : str
         The file as read, kept with the results.
+    audit : AuditSettings
+        How the class is to be judged.
     """
 
     path: Path
@@ -100,6 +103,7 @@ class Study:
     closures: tuple[str, ...]
     cases: tuple[Case, ...]
     text: str
+    audit: AuditSettings = field(default_factory=AuditSettings)
 
     def keys(self) -> list[str]:
         """The key of every case."""
@@ -120,13 +124,14 @@ def read_study(path: str | Path) -> Study:
     file = str(path)
     top = Table(file, "", content, problems)
     not_this_kind(top, {"state": "a state file: localcomp state", "fluid": "a pure-liquid file: localcomp calibrate"})
-    top.known(("study", "class", "pair", "mixtures", "conditions", "units", "shell", "numerics"))
+    top.known(("study", "class", "pair", "mixtures", "conditions", "units", "shell", "numerics", "audit"))
     heading = Table(file, "study", content.get("study", {}), problems)
     heading.known(("name",))
     name = heading.text("name", path.stem)
     units = read_units(Table(file, "units", content.get("units", {}), problems))
     rule = read_shell(Table(file, "shell", content.get("shell", {}), problems))
     accuracy = read_accuracy(Table(file, "numerics", content.get("numerics", {}), problems))
+    audit = read_audit(Table(file, "audit", content.get("audit", {}), problems))
     kinds = [kind for kind in ("class", "pair", "mixtures") if kind in content]
     if len(kinds) != 1:
         top.missing("[class], [pair] or [[mixtures]]", "give exactly one of the three")
@@ -143,7 +148,8 @@ def read_study(path: str | Path) -> Study:
     cases, closures = _expand(conditions, mixtures, kind)
     if problems:
         raise BadInput(problems)
-    return Study(path, name, kind, units, rule, accuracy, closures, cases, path.read_text(encoding="utf-8-sig"))
+    text = path.read_text(encoding="utf-8-sig")
+    return Study(path, name, kind, units, rule, accuracy, closures, cases, text, audit)
 
 
 def values(

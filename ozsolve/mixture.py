@@ -97,6 +97,31 @@ class Mixture:
         """Number of species s."""
         return int(self.diameter.size)
 
+    def athermal(self) -> Mixture:
+        """The same cores and shells with wells of no depth: what is left at infinite temperature."""
+        pairs = self.pairs
+        return _rebuild(
+            self.diameter, self.names, PairTable(pairs.diameter, np.zeros_like(pairs.well_depth), pairs.well_edge)
+        )
+
+    def subset(self, species: Sequence[int]) -> Mixture:
+        """Some of the species, in the order given, with their pairs as they are here.
+
+        Raises
+        ------
+        InputError
+            If a number is not a species' or comes twice.
+        """
+        chosen = list(species)
+        if not chosen or len(set(chosen)) != len(chosen) or not set(chosen) <= set(range(self.species)):
+            raise InputError("species", chosen, f"different numbers from 0 to {self.species - 1}")
+        pick = np.ix_(chosen, chosen)
+        pairs = self.pairs
+        table = PairTable(pairs.diameter[pick], pairs.well_depth[pick], pairs.well_edge[pick])
+        diameter = self.diameter[chosen]
+        diameter.setflags(write=False)
+        return _rebuild(diameter, tuple(self.names[i] for i in chosen), table)
+
     def densities(self, state: State) -> Array:
         """Number densities rho_i, shape (s,), in inverse cubed length units."""
         x = np.asarray(state.mole_fractions)

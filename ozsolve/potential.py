@@ -62,6 +62,10 @@ class PairTable:
     well_depth: Array
     well_edge: Array
 
+    def __post_init__(self) -> None:
+        for table in (self.diameter, self.well_depth, self.well_edge):
+            table.setflags(write=False)
+
     @property
     def well_range(self) -> Array:
         """lam_ij, shape (s, s)."""
@@ -147,8 +151,6 @@ def combine(
             "a well and a shoulder have no geometric mean: give this pair's depth outright",
         )
     _check_table(core, edge)
-    for table in (core, depth, edge):
-        table.setflags(write=False)
     return PairTable(core, depth, edge)
 
 

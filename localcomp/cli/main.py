@@ -10,7 +10,7 @@ from typing import Annotated
 import typer
 
 from localcomp import __version__
-from localcomp.cli import calibrate_command, new_command, state_command, study_command
+from localcomp.cli import audit_command, calibrate_command, new_command, state_command, study_command
 from localcomp.errors import BadInput, LocalcompError, NoAnswer
 
 WRONG_INPUT = 2
@@ -47,6 +47,7 @@ app.command("calibrate")(calibrate_command.calibrate)
 app.command("check")(study_command.check)
 app.command("sweep")(study_command.sweep)
 app.command("table")(study_command.table)
+app.command("audit")(audit_command.audit)
 
 
 def run() -> None:

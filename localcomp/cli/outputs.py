@@ -48,6 +48,14 @@ def write_text(option: str, path: Path, text: str) -> None:
     typer.echo(f"wrote {path}", err=True)
 
 
+def write_file(path: Path, text: str) -> None:
+    """Write one of several results into an output directory, or say why not."""
+    try:
+        path.write_text(text, encoding="utf-8")
+    except OSError as error:
+        raise BadInput([Problem(str(path), "--out", "", f"cannot be written ({error.strerror})")]) from None
+
+
 def print_json(body: dict[str, Any]) -> None:
     """One JSON object on standard output and nothing else."""
     typer.echo(json.dumps(body, indent=2, allow_nan=False))

@@ -61,7 +61,7 @@ def sweep(
     from localcomp.sweep import run
 
     found = read_study(study)
-    _make_directory(out)
+    make_directory(out)
     _describe(found)
     with ExitStack() as stack:
         store = stack.enter_context(Store(out / STORE_NAME))
@@ -70,7 +70,7 @@ def sweep(
         else:
             executor = stack.enter_context(pool(workers)) if workers > 1 else SerialExecutor()
         try:
-            with _Bar(len(found.cases)) as bar:
+            with Bar(len(found.cases)) as bar:
                 result = run(found, store, executor, workers, bar.update)
         except KeyboardInterrupt:
             typer.echo("interrupted; what was stored is safe, the same command resumes", err=True)
@@ -111,7 +111,8 @@ def _describe(study: Study) -> None:
     )
 
 
-def _make_directory(out: Path) -> None:
+def make_directory(out: Path) -> None:
+    """Make the output directory or say why not."""
     try:
         out.mkdir(parents=True, exist_ok=True)
     except OSError as error:
@@ -126,7 +127,7 @@ def _duration(seconds: float) -> str:
     return f"{seconds / 3600.0:.1f} h"
 
 
-class _Bar:
+class Bar:
     """Progress with rate and time left, on standard error."""
 
     def __init__(self, total: int) -> None:
@@ -146,7 +147,7 @@ class _Bar:
         self._began = 0.0
         self._first: int | None = None
 
-    def __enter__(self) -> _Bar:
+    def __enter__(self) -> Bar:
         import time
 
         self._began = time.monotonic()

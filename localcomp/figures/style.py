@@ -17,6 +17,8 @@ SECOND = "#6a4c93"
 SHELL = "#dfe9e6"
 GRID = "#c9d2d6"
 SERIES = ("#0b6e74", "#b3541e", "#6a4c93", "#8a7a1f")
+LINES = ("#0b6e74", "#b3541e", "#6a4c93", "#8a7a1f", "#2f5fa8", "#a23b72", "#4d4d4d")
+"""Colours of lines; with `DASHES`, whose number has no factor in common, 28 combinations."""
 DASHES = ("-", "--", "-.", ":")
 
 RC: dict[str, Any] = {
