@@ -86,7 +86,7 @@ def merged(curves: list[tuple[str, list[Array]]]) -> list[tuple[str, list[Array]
         for n, (names, other) in enumerate(out):
             same = all(np.allclose(a, b, rtol=SAME_CURVE, equal_nan=True) for a, b in zip(values, other, strict=True))
             if same:
-                out[n] = (f"{names} = {label}", other)
+                out[n] = (f"{names}; {label}", other)
                 break
         else:
             out.append((label, values))
@@ -188,7 +188,9 @@ def slope_table(audit: Audit) -> SlopeTable:
                 good = np.isfinite(change[:, i, j])
                 x.append(exchange[good, i, j])
                 y.append(change[good, i, j])
-                group += [f"{audit.names[j]} around {audit.names[i]}"] * int(good.sum())
+                equal = np.isclose(table.diameter[good, i, i], table.diameter[good, j, j])
+                direction = f"{audit.names[j]} around {audit.names[i]}"
+                group += [f"{direction}, {'equal' if same else 'unequal'} sizes" for same in equal]
     claimed: dict[float, list[str]] = {}
     for model, reading in audit.rows():
         slope = _claimed_slope(model, reading, audit.z)
@@ -285,7 +287,7 @@ def reciprocity_curves(audit: Audit, number: int) -> tuple[list[Curve], Curve]:
 
 def _broken(label: str) -> str:
     """A long list of names on several lines."""
-    return label.replace(" = ", " =\n  ") if label.count(" = ") > 1 and len(label) > 45 else label
+    return label.replace("; ", ";\n  ") if len(label) > 40 else label
 
 
 def ln_ratio_uncertainty(audit: Audit, others: Sequence[Array]) -> Array:

@@ -12,7 +12,7 @@ from localcomp.audit import Audit, Verdict, multiplicity
 from localcomp.claims import CLAIMS
 from localcomp.evidence import log_ratio
 from localcomp.report import CAUTION, clean
-from localcomp.standing import Standing, sentences, title
+from localcomp.standing import Standing, reading_text, sentences, title
 from localcomp.study import Study
 
 CLAIM_COLUMNS = (
@@ -31,7 +31,7 @@ def claims_csv(audit: Audit) -> str:
         low, high, rms = v.spread
         numbers = [v.measured, v.claimed, v.deviation, v.uncertainty]
         writer.writerow(
-            [v.model.label, v.reading.label(), _number(float(v.reading.contacts(audit.z))), v.test.claim.value,
+            [v.model.label, reading_text(v.model, v.reading), _number(float(v.reading.contacts(audit.z))), v.test.claim.value,
              v.test.sentence, v.test.quantity, v.outcome.value, *map(_number, numbers), _number(v.tolerance),
              v.test.why, _number(low), _number(high), _number(rms), state_text(v.worst_state), v.reason]
         )  # fmt: skip
@@ -92,7 +92,7 @@ def verdict_body(v: Verdict) -> dict[str, Any]:
     """One verdict as plain values."""
     return {
         "model": v.model.label,
-        "reading": v.reading.label(),
+        "reading": reading_text(v.model, v.reading),
         "claim": v.test.claim.value,
         "claim_text": v.test.sentence,
         "quantity": v.test.quantity,
@@ -125,7 +125,7 @@ def verdicts_json(audit: Audit, ranked: list[Standing]) -> dict[str, Any]:
         "ranking": [
             {
                 "model": s.model.label,
-                "reading": s.reading.label(),
+                "reading": reading_text(s.model, s.reading),
                 "survives": s.survives,
                 **{outcome.value: count for outcome, count in s.counts.items()},
                 "costliest_claim": None if s.costliest is None else s.costliest.test.claim.value,

@@ -153,15 +153,31 @@ def sentences(audit: Audit, ranked: list[Standing]) -> list[str]:
     else:
         out.append("No model's statements all survive over this class.")
     for s in ranked:
-        if s.costliest is None:
-            continue
-        v = s.costliest
-        text = f"{title(s.model, s.reading)}: {v.test.short} costs most ({v.deviation / v.tolerance:.1f} tolerances)"
-        if s.split is not None:
-            claims = ", ".join(s.split.gained)
-            text += f"; within {s.split.keep} ({100 * s.split.kept:.0f} % of the class) these hold too: {claims}"
-        out.append(text + ".")
+        if s.costliest is not None:
+            text = f"{title(s.model, s.reading)}: {cost_text(s)}"
+            if s.split is not None:
+                text += f"; {split_text(s)}"
+            out.append(text + ".")
     return out
+
+
+def cost_text(standing: Standing) -> str:
+    """The claim that costs most."""
+    v = standing.costliest
+    return "" if v is None else f"{v.test.short} costs most ({v.deviation / v.tolerance:.1f} tolerances)"
+
+
+def split_text(standing: Standing) -> str:
+    """The part of the class in which more claims hold."""
+    split = standing.split
+    if split is None:
+        return ""
+    return f"within {split.keep} ({100 * split.kept:.0f} % of the class) these hold too: {', '.join(split.gained)}"
+
+
+def reading_text(model: ActivityModel, reading: Reading) -> str:
+    """The reading, or "either" where the statement does not depend on it."""
+    return "either" if len(model.readings) == 1 else reading.label()
 
 
 def title(model: ActivityModel, reading: Reading) -> str:

@@ -59,6 +59,7 @@ STUDY_TOML = """\
 #   localcomp check study.toml                how many states, how long, mistakes in this file
 #   localcomp sweep study.toml --out results  solve them; interrupted runs resume
 #   localcomp table results                   CSV and a summary
+#   localcomp audit study.toml --out results  which model's statements hold, and where they break
 # A list may be a range: { from = 1.0, to = 2.0, steps = 5 }.
 
 [study]
@@ -76,7 +77,7 @@ well_range = 1.5
 [conditions]
 temperature = { from = 1.5, to = 3.0, steps = 4 }
 temperature_reference = "mean"           # T* = kT over: mean (of eps_1, eps_2), first, second, absolute
-packing_fraction = 0.40
+packing_fraction = [0.35, 0.40]
 composition = [0.0, 0.1, 0.3, 0.5, 0.7, 0.9, 1.0]   # x_1; 0 and 1 are infinite dilution
 # mole_fractions = [[0.2, 0.3, 0.5]]     # for more than two species
 closures = ["rhnc"]                      # rhnc, hnc, py, msa
@@ -86,4 +87,15 @@ rule = "well_edge"
 
 [numerics]
 accuracy = 1e-5
+
+# How `localcomp audit study.toml --out results` judges models; all of it may be left out.
+# [audit]
+# models = ["wilson", "nrtl", "uniquac", "lsg", "quasi-chemical", "random"]   # or "all"
+# z = 10                                 # lattice coordination number; or "measured"
+# [audit.tolerances]                     # largest difference that still holds; set them before you look
+# composition = 0.05                     # in ln R; also: boltzmann, athermal, density, ternary, shell_rule
+# product = 0.10                         # in ln(R_12 R_21)
+# reciprocity = 0.05                     # in ln(x_1 N_12 / x_2 N_21)
+# coordination = 0.10                    # in ln N_i
+# energy = 0.01                          # of the mean well depth
 """

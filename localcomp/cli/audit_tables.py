@@ -29,8 +29,18 @@ def print_audit(audit: Audit, ranked: list[Standing]) -> None:
         f"uncertainty from {', '.join(audit.companions) or 'none'}; z = {audit.z:.4g} (measured mean "
         f"{audit.z_measured:.3g})"
     )
-    for line in sentences(audit, ranked):
-        out.print(line, markup=False)
+    out.print(sentences(audit, ranked)[0], markup=False)
+    costs = table(
+        "\nWhat costs most, and what to split off", "model, reading", "costs most (tolerances)", "holds too within"
+    )
+    for s in ranked:
+        if s.costliest is not None:
+            worst = f"{s.costliest.test.short} ({s.cost:.1f})"
+            kept = (
+                "" if s.split is None else f"{s.split.keep} ({100 * s.split.kept:.0f} %): {', '.join(s.split.gained)}"
+            )
+            costs.add_row(title(s.model, s.reading), worst, kept)
+    put(out, costs)
     untested = dict.fromkeys(
         f"claim {v.test.claim.value} {v.reason}" for v in audit.verdicts if v.reason.startswith("not tested")
     )

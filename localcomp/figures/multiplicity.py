@@ -11,10 +11,13 @@ from matplotlib.colors import TwoSlopeNorm
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from localcomp.figures.ratios import Curve
+from localcomp.figures.ratios import Curve, called
 from localcomp.figures.style import DASHES, GRID, INK, LINES, look
 
 Array = NDArray[np.float64]
+
+LEAST_RANGE = 0.2
+"""Of a multiplicity axis: less than that is no difference worth seeing."""
 
 
 @dataclass(frozen=True)
@@ -38,19 +41,19 @@ class MultiplicityMap:
 
 def multiplicity_maps(maps: Sequence[MultiplicityMap], heading: str) -> Figure:
     """One panel per pair direction; every cell carries its number, blank cells have no energy difference."""
-    columns = max(len(m.columns) for m in maps)
-    rows = max(len(m.rows) for m in maps)
+    across = min(2, len(maps))
+    down = -(-len(maps) // across)
+    width = max(1.6 + 0.62 * max(len(m.columns) for m in maps), 3.3) * across + 1.0
+    height = (max(0.42 * max(len(m.rows) for m in maps), 1.3) + 0.9) * down + 0.6
     with look():
-        figure = Figure(
-            figsize=(max(2.2 + 0.62 * columns, 3.3) * len(maps) + 0.6, max(0.46 * rows, 1.4) + 1.9),
-            layout="constrained",
-        )
-        axes = figure.subplots(1, len(maps), squeeze=False)[0]
+        figure = Figure(figsize=(width, height), layout="constrained")
+        axes = figure.subplots(down, across, squeeze=False).ravel()
         found = np.concatenate([m.values[np.isfinite(m.values)] for m in maps])
         low, high = (float(found.min()), float(found.max())) if found.size else (0.0, 1.0)
         norm = TwoSlopeNorm(1.0, min(low, 0.0) - 1e-6, max(high, 2.0) + 1e-6)
         image = None
-        for axis, part in zip(axes, maps, strict=True):
+        for axis, part in zip(axes, maps, strict=False):
+            axis.set_facecolor(GRID)
             image = axis.imshow(
                 np.ma.masked_invalid(part.values), origin="lower", aspect="auto", cmap=colormaps["PuOr"], norm=norm
             )
@@ -68,7 +71,7 @@ def multiplicity_maps(maps: Sequence[MultiplicityMap], heading: str) -> Figure:
             axis.set_title(part.title)
         if image is not None:
             figure.colorbar(image, ax=list(axes), label="multiplicity m (1: one contact's energy)", shrink=0.95)
-        figure.suptitle(heading, fontsize=10)
+        figure.suptitle(f"{heading}\ngrey: the energies do not differ, or no solution", fontsize=10)
     return figure
 
 
@@ -83,7 +86,10 @@ def multiplicity_lines(curves: Sequence[Curve], heading: str, species: str) -> F
                       ls=DASHES[n % len(DASHES)], label=curve.label)  # fmt: skip
         axis.set_xlim(-0.03, 1.03)
         axis.margins(y=0.15)
-        axis.set_xlabel(f"mole fraction of {species}")
+        low, high = axis.get_ylim()
+        if high - low < LEAST_RANGE:
+            axis.set_ylim(0.5 * (low + high - LEAST_RANGE), 0.5 * (low + high + LEAST_RANGE))
+        axis.set_xlabel(f"mole fraction of {called(species)}")
         axis.set_ylabel("multiplicity m, dimensionless")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper")
         figure.suptitle(heading, fontsize=10)

@@ -19,6 +19,11 @@ HEADROOM = 1.6
 """How far beyond what was found, as a factor, a panel reaches; lines that leave it are cut off."""
 
 
+def called(name: str) -> str:
+    """A species in an axis label; a bare number is not a name."""
+    return f"species {name}" if name.isdigit() else name
+
+
 @dataclass(frozen=True)
 class Curve:
     """A line with a label."""
@@ -68,9 +73,15 @@ def ratio_figure(panels: Sequence[Sequence[RatioPanel]], heading: str, species: 
                 if column == 0:
                     axes[row, column].set_ylabel(panel.ylabel)
                 if row == rows - 1:
-                    axes[row, column].set_xlabel(f"mole fraction of {species}")
+                    axes[row, column].set_xlabel(f"mole fraction of {called(species)}")
         figure.legend(
-            handles, [str(h.get_label()) for h in handles], loc="outside lower center", ncols=2, handlelength=3.2
+            handles,
+            [str(h.get_label()) for h in handles],
+            loc="outside lower center",
+            ncols=2,
+            handlelength=3.2,
+            title="lines not seen lie outside the panels",
+            title_fontsize=8.0,
         )
         figure.suptitle(heading, fontsize=10)
     return figure
@@ -157,7 +168,7 @@ def slope_figure(table: SlopeTable, heading: str) -> Figure:
         axis.set_xlabel("β (ε_ij − ε_ii), dimensionless")
         axis.set_ylabel("ln R_ij − ln R_ij (athermal), dimensionless")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", markerscale=1.8)
-        figure.suptitle(heading, fontsize=10)
+        axis.set_title(heading, fontsize=10)
     return figure
 
 
@@ -181,9 +192,9 @@ def reciprocity_figure(
         axis.set_ylim(min(low / 1.15, 0.8), max(high * 1.15, 1.25))
         _plain_log(axis)
         axis.set_xlim(-0.03, 1.03)
-        axis.set_xlabel(f"mole fraction of {species}")
+        axis.set_xlabel(f"mole fraction of {called(species)}")
         i, j = pair
-        axis.set_ylabel(f"x N({j} around {i}) / x N({i} around {j})")
+        axis.set_ylabel(f"pairs counted from {i} / pairs counted from {j}")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", handlelength=3.2)
-        figure.suptitle(heading, fontsize=10)
+        axis.set_title(heading, fontsize=10)
     return figure
