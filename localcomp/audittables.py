@@ -30,8 +30,9 @@ def claims_csv(audit: Audit) -> str:
     for v in audit.verdicts:
         low, high, rms = v.spread
         numbers = [v.measured, v.claimed, v.deviation, v.uncertainty]
+        contacts = float(v.reading.contacts(audit.z))
         writer.writerow(
-            [v.model.label, reading_text(v.model, v.reading), _number(float(v.reading.contacts(audit.z))), v.test.claim.value,
+            [v.model.label, reading_text(v.model, v.reading), _number(contacts), v.test.claim.value,
              v.test.sentence, v.test.quantity, v.outcome.value, *map(_number, numbers), _number(v.tolerance),
              v.test.why, _number(low), _number(high), _number(rms), state_text(v.worst_state), v.reason]
         )  # fmt: skip

@@ -33,6 +33,7 @@ def new(
     if study:
         typer.echo(f"  localcomp check {directory / 'study.toml'}")
         typer.echo(f"  localcomp sweep {directory / 'study.toml'} --out {directory / 'results'}")
+        typer.echo(f"  localcomp audit {directory / 'study.toml'} --out {directory / 'results'}")
         return
     typer.echo(f"  localcomp state {directory / 'state.toml'}")
     typer.echo(f"  localcomp calibrate {directory / 'liquid.toml'}")

@@ -168,7 +168,7 @@ def slope_figure(table: SlopeTable, heading: str) -> Figure:
         axis.set_xlabel("β (ε_ij − ε_ii), dimensionless")
         axis.set_ylabel("ln R_ij − ln R_ij (athermal), dimensionless")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", markerscale=1.8)
-        axis.set_title(heading, fontsize=10)
+        axis.set_title(heading, fontsize=10, loc="left")
     return figure
 
 
@@ -196,5 +196,5 @@ def reciprocity_figure(
         i, j = pair
         axis.set_ylabel(f"pairs counted from {i} / pairs counted from {j}")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", handlelength=3.2)
-        axis.set_title(heading, fontsize=10)
+        axis.set_title(heading, fontsize=10, loc="left")
     return figure

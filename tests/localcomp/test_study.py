@@ -37,7 +37,7 @@ def study(tmp_path: Path, text: str):
 
 def test_the_template_expands(tmp_path: Path) -> None:
     found = study(tmp_path, STUDY_TOML)
-    assert len(found.cases) == 3 * 3 * 2 * 4 * 7
+    assert len(found.cases) == 3 * 3 * 2 * 2 * 4 * 7
     assert found.cases[0].labels["size_ratio"] == 1.0
 
 
