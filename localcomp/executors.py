@@ -8,13 +8,15 @@ import time
 from collections.abc import Iterator
 from concurrent.futures import Executor, Future, ProcessPoolExecutor
 from contextlib import contextmanager
-from multiprocessing import get_context
+from multiprocessing import active_children, get_context
 from typing import Any
 
 from localcomp.errors import BadInput, Problem
 
 SINGLE_THREAD = ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS", "VECLIB_MAXIMUM_THREADS")
 CONNECT_SECONDS = 20
+WATCH_SECONDS = 0.5
+STUCK_SECONDS = 3.0
 
 
 class SerialExecutor(Executor):
@@ -39,9 +41,12 @@ def pool(workers: int) -> Iterator[Executor]:
         executor = ProcessPoolExecutor(
             workers, mp_context=get_context("spawn"), initializer=_die_with_parent, initargs=(os.getpid(),)
         )
+        done = threading.Event()
+        threading.Thread(target=_watch_workers, args=(executor, done), daemon=True).start()
         try:
             yield executor
         finally:
+            done.set()
             executor.shutdown(wait=True, cancel_futures=True)
     finally:
         for name, value in before.items():
@@ -49,6 +54,32 @@ def pool(workers: int) -> Iterator[Executor]:
                 os.environ.pop(name, None)
             else:
                 os.environ[name] = value
+
+
+def _watch_workers(executor: ProcessPoolExecutor, done: threading.Event) -> None:
+    """Break a pool that a dead worker has left hanging.
+
+    A worker that is killed while it writes a result leaves half a message in a pipe that the pool then
+    waits on for ever. A pool that notices a death ends its other workers at once; one that still has both
+    dead and living workers `STUCK_SECONDS` later never will, so its workers and the pipe are closed here.
+    """
+    before = set(active_children())
+    seen: set[Any] = set()
+    since: float | None = None
+    while not done.wait(WATCH_SECONDS):
+        alive = set(active_children()) - before
+        seen |= alive
+        if seen <= alive or not alive:
+            since = None
+        elif since is None:
+            since = time.monotonic()
+        elif time.monotonic() - since > STUCK_SECONDS:
+            for worker in alive:
+                worker.kill()
+            queue = getattr(executor, "_result_queue", None)  # the pipe's last open end is the pool's own
+            if queue is not None:
+                queue._writer.close()
+            return
 
 
 def _die_with_parent(parent: int) -> None:

@@ -79,11 +79,11 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
     count_bars = rho[None, :] * bar
     total = counts.sum(axis=1, keepdims=True)
     fractions = counts / total
-    relative = np.divide(bar, np.abs(integral), out=np.zeros_like(bar), where=integral != 0.0)
-    own = np.diag(integral)[:, None]
-    ratios = integral / own
-    ratio_bars = np.abs(ratios) * (relative + np.diag(relative)[:, None])
-    np.fill_diagonal(ratio_bars, 0.0)
+    size = np.abs(integral)
+    relative = bar / np.where(size > 0.0, size, np.inf)
+    ratios = integral / integral.diagonal()[:, None]
+    ratio_bars = np.abs(ratios) * (relative + relative.diagonal()[:, None])
+    ratio_bars.flat[:: len(rho) + 1] = 0.0
     fraction_bars = np.abs(fractions * (1.0 - fractions)) * (relative + relative.max(axis=1, keepdims=True))
     tables = (radius, counts, fractions, ratios, count_bars, fraction_bars, ratio_bars)
     for table in tables:
@@ -93,6 +93,8 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
 
 def _refuse_empty(solution: Solution, integral: Array) -> None:
     """A shoulder too high to climb leaves nothing within the well edge, and ratios have no meaning."""
+    if integral.diagonal().all():
+        return
     for name, own in zip(solution.mixture.names, np.diag(integral), strict=True):
         if own == 0.0:
             raise NoAnswer(

@@ -8,14 +8,15 @@ from __future__ import annotations
 
 import hashlib
 import itertools
-import json
 import math
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
+from functools import cached_property
 from pathlib import Path
-from typing import Any, TypeGuard
+from typing import TypeGuard
 
 import numpy as np
+from numpy.typing import NDArray
 
 from localcomp.auditsettings import AuditSettings, read_audit
 from localcomp.errors import BadInput, Problem
@@ -25,7 +26,7 @@ from localcomp.tables import SIZE_LIMITS, Table, as_number, load_toml, of_usable
 from localcomp.units import Units
 from ozsolve import CLOSURES, InputError, Mixture, State
 
-SCHEMA_VERSION = 1
+SCHEMA_VERSION = 2
 """Version of what a stored result means; part of every key, so that old results are never mixed in."""
 MOST_CASES = 1_000_000
 REFERENCES = ("mean", "first", "second", "absolute")
@@ -55,22 +56,17 @@ class Case:
     def key(self, accuracy: float, rule: ShellRule) -> str:
         """Hash of physics, closure, accuracy, shell rule and schema version."""
         pairs = self.mixture.pairs
-        content = {
-            "schema": SCHEMA_VERSION,
-            "closure": self.closure,
-            "accuracy": float(accuracy).hex(),
-            "shell": [rule.name, rule.multiple.hex() if isinstance(rule, FixedMultiple) else ""],
-            "diameter": _hex(pairs.diameter),
-            "well_depth": _hex(pairs.well_depth),
-            "well_edge": _hex(pairs.well_edge),
-            "temperature": float(self.state.temperature).hex(),
-            "densities": _hex(self.mixture.densities(self.state)),
-        }
-        return hashlib.sha256(json.dumps(content, sort_keys=True).encode()).hexdigest()
+        multiple = rule.multiple if isinstance(rule, FixedMultiple) else 0.0
+        words = f"{SCHEMA_VERSION} {self.closure} {rule.name} {self.mixture.species}"
+        numbers = [float(accuracy), multiple, float(self.state.temperature)]
+        tables = (np.array(numbers), pairs.diameter, pairs.well_depth, pairs.well_edge, self.densities)
+        content = b"".join(table.astype("<f8", copy=False).tobytes() for table in tables)
+        return hashlib.sha256(words.encode() + b"\0" + content).hexdigest()
 
-
-def _hex(array: Any) -> list[str]:
-    return [float(v).hex() for v in np.ravel(array)]
+    @cached_property
+    def densities(self) -> NDArray[np.float64]:
+        """rho_i, shape (s,)."""
+        return self.mixture.densities(self.state)
 
 
 @dataclass(frozen=True)
@@ -282,12 +278,13 @@ def _cases(
         unit = temperature_unit(mixture, reference)
         try:
             state = State(reduced * unit, fractions, packing_fraction=eta)
-            mixture.densities(state)
+            case = Case(mixture, state, closure, {**labels, "reduced_temperature": reduced})
+            _ = case.densities
             mixture.reduced_depths(state)
         except InputError as error:
             table.complain(error.field, error.value, error.allowed)
             return
-        yield Case(mixture, state, closure, {**labels, "reduced_temperature": reduced})
+        yield case
 
 
 def temperature_unit(mixture: Mixture, reference: str) -> float:

@@ -7,6 +7,7 @@ killed and resumed does the same arithmetic as one that was not.
 from __future__ import annotations
 
 import itertools
+import math
 import time
 from collections.abc import Callable, Iterator
 from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, wait
@@ -87,9 +88,8 @@ def units(study: Study) -> list[tuple[list[str], list[Case]]]:
 
 def _family(case: Case) -> tuple[str, tuple[float, ...], tuple[float, ...]]:
     """What states share that profit from one another: closure, diameters, densities."""
-    rho = case.mixture.densities(case.state)
     pairs = case.mixture.pairs
-    return case.closure, (*np.ravel(pairs.diameter), *np.ravel(pairs.well_edge)), tuple(rho)
+    return case.closure, (*np.ravel(pairs.diameter), *np.ravel(pairs.well_edge)), tuple(case.densities)
 
 
 def work(unit: Unit) -> list[Row]:
@@ -130,9 +130,17 @@ def result_of(solution: Solution, rule: ShellRule) -> dict[str, Any]:
         concentration_structure_factor=solution.concentration_structure_factor,
         relative_error=solution.relative_error,
     )
-    cleaned = clean(body)
-    assert isinstance(cleaned, dict)
-    return cleaned
+    return {name: _plain(value) for name, value in body.items()}
+
+
+def _plain(value: Any) -> Any:
+    """What JSON can hold: lists, and None for numbers that are not finite."""
+    if isinstance(value, float):
+        return value if math.isfinite(value) else None
+    if isinstance(value, np.ndarray):
+        listed = value.tolist()
+        return listed if math.isfinite(sum(map(sum, listed))) else clean(listed)
+    return value
 
 
 def run(study: Study, store: Store, executor: Executor, workers: int, progress: Progress | None = None) -> SweepResult:
@@ -168,18 +176,17 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
                 break
             done, flying = wait(flying, return_when=FIRST_COMPLETED)
             for future in done:
-                try:
-                    rows = future.result()
-                except BrokenExecutor as error:
-                    raise WorkerLost(
-                        f"a worker process died ({error}); what was stored is safe, the same command resumes"
-                    ) from None
+                rows = future.result()
                 store.add(rows)
                 computed += len(rows)
                 present += len(rows)
                 failed += sum(status not in SOLVED for _, status, _ in rows)
                 if progress is not None:
                     progress(present, total, failed)
+    except BrokenExecutor as error:
+        raise WorkerLost(
+            f"a worker process died ({error}); what was stored is safe, the same command resumes"
+        ) from None
     finally:
         for future in flying:
             future.cancel()

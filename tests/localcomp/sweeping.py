@@ -2,8 +2,14 @@
 
 from __future__ import annotations
 
+import gc
+import os
+import signal
+import struct
 import subprocess
 import sys
+import time
+from multiprocessing.queues import SimpleQueue
 from pathlib import Path
 
 STUDY = """\
@@ -36,3 +42,17 @@ def table_bytes(results: Path) -> bytes:
     done = run("table", results)
     assert done.returncode == 0, done.stderr
     return (results / "states.csv").read_bytes()
+
+
+def half_a_result() -> None:
+    """In a worker: begin to write a result and die, as a kill at the wrong moment does."""
+    for queue in [found for found in gc.get_objects() if isinstance(found, SimpleQueue)]:
+        writer = queue._writer  # type: ignore[attr-defined]
+        queue._wlock.acquire()  # type: ignore[attr-defined]
+        os.write(writer.fileno(), struct.pack("!i", 100_000) + b"x" * 1000)
+    os.kill(os.getpid(), signal.SIGKILL)
+
+
+def short_work() -> int:
+    time.sleep(0.2)
+    return 1

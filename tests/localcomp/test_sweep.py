@@ -8,16 +8,18 @@ import random
 import signal
 import subprocess
 import time
+from concurrent.futures import BrokenExecutor, wait
 from pathlib import Path
 
 import pytest
 
+from localcomp import executors
 from localcomp.executors import SerialExecutor, pool
 from localcomp.store import Store
 from localcomp.study import read_study
 from localcomp.sweep import AHEAD, UNIT_SIZE, is_solved
 from localcomp.sweep import run as run_sweep
-from tests.localcomp.sweeping import command, run, table_bytes, write_study
+from tests.localcomp.sweeping import command, half_a_result, run, short_work, table_bytes, write_study
 
 MANY = "{ from = 0.02, to = 0.98, steps = 21 }"
 SIZES = "[1.0, 1.2, 1.4, 1.6]"
@@ -198,6 +200,18 @@ def test_a_dead_worker_ends_with_a_sentence(tmp_path: Path) -> None:
     if process.returncode != 0:  # the last unit may have been stored before the worker died
         assert "worker" in errors
     assert run("sweep", study, "--out", tmp_path / "out", "--workers", "2").returncode == 0
+
+
+def test_a_worker_that_dies_while_it_answers_does_not_hang_the_pool(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Half a message stays in the pool's pipe; without the watch the pool waits for the rest for ever."""
+    monkeypatch.setattr(executors, "STUCK_SECONDS", 0.5)
+    with executors.pool(2) as executor:
+        wait([executor.submit(short_work) for _ in range(4)])
+        lost = executor.submit(half_a_result)
+        others = [executor.submit(short_work) for _ in range(3)]
+        with pytest.raises(BrokenExecutor):
+            lost.result(timeout=30)
+        assert all(isinstance(other.exception(timeout=30), BrokenExecutor | None) for other in others)
 
 
 def test_lost_work_is_bounded() -> None:
