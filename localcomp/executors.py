@@ -42,12 +42,15 @@ def pool(workers: int) -> Iterator[Executor]:
             workers, mp_context=get_context("spawn"), initializer=_die_with_parent, initargs=(os.getpid(),)
         )
         done = threading.Event()
-        threading.Thread(target=_watch_workers, args=(executor, done), daemon=True).start()
+        others = set(active_children())
+        threading.Thread(target=_watch_workers, args=(executor, others, done), daemon=True).start()
         try:
             yield executor
         finally:
-            done.set()
-            executor.shutdown(wait=True, cancel_futures=True)
+            try:
+                executor.shutdown(wait=True, cancel_futures=True)
+            finally:
+                done.set()
     finally:
         for name, value in before.items():
             if value is None:
@@ -56,20 +59,20 @@ def pool(workers: int) -> Iterator[Executor]:
                 os.environ[name] = value
 
 
-def _watch_workers(executor: ProcessPoolExecutor, done: threading.Event) -> None:
+def _watch_workers(executor: ProcessPoolExecutor, others: set[Any], done: threading.Event) -> None:
     """Break a pool that a dead worker has left hanging.
 
     A worker that is killed while it writes a result leaves half a message in a pipe that the pool then
-    waits on for ever. A pool that notices a death ends its other workers at once; one that still has both
-    dead and living workers `STUCK_SECONDS` later never will, so its workers and the pipe are closed here.
+    waits on for ever. A pool that notices a death breaks at once; one that is still there `STUCK_SECONDS`
+    later never will, so its workers and the pipe are closed here.
+    While the pool shuts down that means: a worker still busy with what nobody waits for is ended.
     """
-    before = set(active_children())
     seen: set[Any] = set()
     since: float | None = None
     while not done.wait(WATCH_SECONDS):
-        alive = set(active_children()) - before
+        alive = set(active_children()) - others
         seen |= alive
-        if seen <= alive or not alive:
+        if seen <= alive:
             since = None
         elif since is None:
             since = time.monotonic()
