@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import os
+import sys
 import threading
 import time
 from collections.abc import Iterator
-from concurrent.futures import Executor, Future, ProcessPoolExecutor
+from concurrent.futures import BrokenExecutor, Executor, Future, ProcessPoolExecutor
 from contextlib import contextmanager
 from multiprocessing import active_children, get_context
 from typing import Any
@@ -57,6 +58,15 @@ def pool(workers: int) -> Iterator[Executor]:
                 os.environ.pop(name, None)
             else:
                 os.environ[name] = value
+
+
+def worker_deaths() -> tuple[type[BaseException], ...]:
+    """What a future raises when the workers that ran it died."""
+    if "distributed" not in sys.modules:
+        return (BrokenExecutor,)
+    from distributed.scheduler import KilledWorker  # a batch that took several workers with it
+
+    return (BrokenExecutor, KilledWorker)
 
 
 def _watch_workers(executor: ProcessPoolExecutor, others: set[Any], done: threading.Event) -> None:

@@ -100,6 +100,12 @@ class Store:
                 f"{self.path}: was written with store version {version}, this program uses {STORE_VERSION}; "
                 "it is left as it is, use another --out directory"
             )
+        missing = {"states", "notes"} - {name for (name,) in self._db.execute("SELECT name FROM sqlite_master")}
+        if missing:
+            raise StoreError(
+                f"{self.path}: is damaged (no table {', '.join(sorted(missing))}); it is left as it is, "
+                "use another --out directory"
+            )
         (verdict,) = self._db.execute("PRAGMA quick_check(1)").fetchone()
         if verdict != "ok":
             raise StoreError(f"{self.path}: is damaged ({verdict}); it is left as it is, use another --out directory")

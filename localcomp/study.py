@@ -236,6 +236,10 @@ def _class(table: Table) -> list[tuple[Mixture, dict[str, float | str]]]:
     ]
     if len(table.problems) > before:
         return []
+    count = math.prod(len(found) for found in lists)
+    if count > MOST_CASES:  # before they are built: five ranges of a thousand would never end
+        table.complain("size_ratio", len(lists[0]), f"the class has {count} pairs; up to {MOST_CASES} are allowed")
+        return []
     out: list[tuple[Mixture, dict[str, float | str]]] = []
     for size, energy, k, l_, reach in itertools.product(*lists):
         try:
@@ -293,7 +297,7 @@ def temperature_unit(mixture: Mixture, reference: str) -> float:
     if reference == "first":
         return float(depth[0])
     if reference == "second":
-        return float(depth[-1])
+        return float(depth[1]) if len(depth) > 1 else float(depth[0])
     return float(depth.mean()) if reference == "mean" else 1.0
 
 

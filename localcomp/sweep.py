@@ -10,13 +10,14 @@ import itertools
 import math
 import time
 from collections.abc import Callable, Iterator
-from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future, wait
+from concurrent.futures import FIRST_COMPLETED, CancelledError, Executor, Future, wait
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
 from localcomp.errors import LocalcompError, NoAnswer
+from localcomp.executors import worker_deaths
 from localcomp.neighbors import count_neighbors
 from localcomp.report import clean
 from localcomp.shells import ShellRule
@@ -183,7 +184,9 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
                 failed += sum(status not in SOLVED for _, status, _ in rows)
                 if progress is not None:
                     progress(present, total, failed)
-    except BrokenExecutor as error:
+    except CancelledError:  # a client cancels what it gave to a scheduler that is gone
+        raise WorkerLost("the scheduler is gone; what was stored is safe, the same command resumes") from None
+    except worker_deaths() as error:
         raise WorkerLost(
             f"a worker process died ({error}); what was stored is safe, the same command resumes"
         ) from None

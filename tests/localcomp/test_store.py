@@ -101,3 +101,16 @@ def test_two_writers_do_not_disturb_each_other(tmp_path: Path) -> None:
             one.add(rows(n, n + 10))
             two.add(rows(n + 5, n + 15))
         assert set(one.known()) == set(two.known()) == {f"key{n}" for n in range(205)}
+
+
+@pytest.mark.parametrize("name", ["states", "notes"])
+def test_a_store_without_a_table_is_refused_and_left_alone(tmp_path: Path, name: str) -> None:
+    path = tmp_path / "s.sqlite"
+    Store(path).close()
+    with sqlite3.connect(path) as raw:
+        raw.execute(f"DROP TABLE {name}")
+    raw.close()
+    before = path.read_bytes()
+    with pytest.raises(StoreError, match=f"damaged .no table {name}"):
+        Store(path)
+    assert path.read_bytes() == before

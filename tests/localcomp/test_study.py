@@ -7,9 +7,10 @@ from pathlib import Path
 import pytest
 
 from localcomp.errors import BadInput
-from localcomp.study import read_study
+from localcomp.study import read_study, temperature_unit
 from localcomp.sweep import units
 from localcomp.templates import STUDY_TOML
+from ozsolve import Mixture
 from tests.localcomp.sweeping import write_study
 
 PAIR = """\
@@ -115,3 +116,20 @@ def test_every_mistake_is_named_at_once(tmp_path: Path, text: str) -> None:
     for part in BAD[text]:
         assert part in str(caught.value)
     assert all(str(tmp_path / "study.toml") in str(problem) for problem in caught.value.problems)
+
+
+def test_the_second_species_of_three_is_not_the_last() -> None:
+    mixture = Mixture([1.0, 1.1, 1.2], [1.0, 1.5, 3.0])
+    units = {name: temperature_unit(mixture, name) for name in ("first", "second", "mean", "absolute")}
+    assert units == pytest.approx({"first": 1.0, "second": 1.5, "mean": 5.5 / 3.0, "absolute": 1.0})
+
+
+def test_a_class_too_large_to_build_is_refused_before_it_is_built(tmp_path: Path) -> None:
+    long = "{ from = 1.0, to = 2.0, steps = 1000 }"
+    path = tmp_path / "study.toml"
+    path.write_text(
+        f"[class]\nsize_ratio = {long}\nenergy_ratio = {long}\nk = {{ from = 0, to = 0.2, steps = 1000 }}\n"
+        "[conditions]\ntemperature = 2.0\npacking_fraction = 0.3\ncomposition = 0.5\n"
+    )
+    with pytest.raises(BadInput, match="1000000000 pairs; up to 1000000"):
+        read_study(path)

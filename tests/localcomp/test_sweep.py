@@ -8,8 +8,9 @@ import random
 import signal
 import subprocess
 import time
-from concurrent.futures import BrokenExecutor, wait
+from concurrent.futures import BrokenExecutor, Executor, Future, wait
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -17,7 +18,7 @@ from localcomp import executors
 from localcomp.executors import SerialExecutor, pool
 from localcomp.store import Store
 from localcomp.study import read_study
-from localcomp.sweep import AHEAD, UNIT_SIZE, is_solved
+from localcomp.sweep import AHEAD, UNIT_SIZE, WorkerLost, is_solved
 from localcomp.sweep import run as run_sweep
 from tests.localcomp.sweeping import command, half_a_result, run, short_work, table_bytes, write_study
 
@@ -221,3 +222,19 @@ def test_lost_work_is_bounded() -> None:
 def test_results_say_whether_they_have_numbers() -> None:
     assert is_solved({"status": "solved", "coordination_numbers": [[1.0]]})
     assert not is_solved({"status": "branch_end"})
+
+
+class Gone(Executor):
+    """Cancels all it is given, as a cluster client does when its scheduler is gone."""
+
+    def submit(self, fn: Any, /, *args: Any, **kwargs: Any) -> Future[Any]:
+        future: Future[Any] = Future()
+        future.cancel()
+        future.set_running_or_notify_cancel()
+        return future
+
+
+def test_a_scheduler_that_is_gone_ends_with_a_sentence(tmp_path: Path) -> None:
+    study = read_study(write_study(tmp_path / "study.toml"))
+    with Store(tmp_path / "s.sqlite") as store, pytest.raises(WorkerLost, match="scheduler is gone"):
+        run_sweep(study, store, Gone(), 1)
