@@ -92,7 +92,7 @@ def _watch_workers(executor: ProcessPoolExecutor, others: set[Any], done: thread
             queue = getattr(executor, "_result_queue", None)  # the pipe's last open end is the pool's own
             if queue is not None:
                 queue._writer.close()
-            return
+            since = None  # and again, should another worker have started meanwhile
 
 
 def _die_with_parent(parent: int) -> None:
