@@ -9,7 +9,7 @@ import time
 from collections.abc import Iterator
 from concurrent.futures import BrokenExecutor, Executor, Future, ProcessPoolExecutor
 from contextlib import contextmanager
-from multiprocessing import active_children, get_context
+from multiprocessing import get_context
 from typing import Any
 
 from localcomp.errors import BadInput, Problem
@@ -43,8 +43,7 @@ def pool(workers: int) -> Iterator[Executor]:
             workers, mp_context=get_context("spawn"), initializer=_die_with_parent, initargs=(os.getpid(),)
         )
         done = threading.Event()
-        others = set(active_children())
-        threading.Thread(target=_watch_workers, args=(executor, others, done), daemon=True).start()
+        threading.Thread(target=_watch_workers, args=(executor, done), daemon=True).start()
         try:
             yield executor
         finally:
@@ -69,7 +68,7 @@ def worker_deaths() -> tuple[type[BaseException], ...]:
     return (BrokenExecutor, KilledWorker)
 
 
-def _watch_workers(executor: ProcessPoolExecutor, others: set[Any], done: threading.Event) -> None:
+def _watch_workers(executor: ProcessPoolExecutor, done: threading.Event) -> None:
     """Break a pool that a dead worker has left hanging.
 
     A worker that is killed while it writes a result leaves half a message in a pipe that the pool then
@@ -77,17 +76,16 @@ def _watch_workers(executor: ProcessPoolExecutor, others: set[Any], done: thread
     later never will, so its workers and the pipe are closed here.
     While the pool shuts down that means: a worker still busy with what nobody waits for is ended.
     """
-    seen: set[Any] = set()
     since: float | None = None
     while not done.wait(WATCH_SECONDS):
-        alive = set(active_children()) - others
-        seen |= alive
-        if seen <= alive:
+        # the executor says nothing in public about its workers; an executor without these names goes unwatched
+        workers = list((getattr(executor, "_processes", None) or {}).values())
+        if all(worker.is_alive() for worker in workers):
             since = None
         elif since is None:
             since = time.monotonic()
         elif time.monotonic() - since > STUCK_SECONDS:
-            for worker in alive:
+            for worker in workers:
                 worker.kill()
             queue = getattr(executor, "_result_queue", None)  # the pipe's last open end is the pool's own
             if queue is not None:
