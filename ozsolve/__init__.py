@@ -9,6 +9,7 @@ from ozsolve.errors import InputError, NotConverged, OzsolveError
 from ozsolve.many import solve_many
 from ozsolve.mixture import Mixture, State
 from ozsolve.potential import PairOverride, PairTable
+from ozsolve.sensitivity import Sensitivity, sensitivity
 from ozsolve.solution import Solution, Stats
 from ozsolve.solver import DEFAULT_ACCURACY, solve
 from ozsolve.stopping import Status
@@ -27,11 +28,13 @@ __all__ = [
     "OzsolveError",
     "PairOverride",
     "PairTable",
+    "Sensitivity",
     "Solution",
     "State",
     "Stats",
     "Status",
     "get_closure",
+    "sensitivity",
     "solve",
     "solve_many",
 ]

@@ -12,7 +12,7 @@ import ozsolve
 ROOT = Path(__file__).resolve().parents[1]
 LADDER = [
     "errors", "potential", "mixture", "grid", "closures", "transform", "oz", "stopping", "equations", "anderson",
-    "iteration", "newton", "continuation", "thermodynamics", "root", "response", "solution", "solver",
+    "iteration", "newton", "continuation", "thermodynamics", "root", "response", "solution", "sensitivity", "solver",
     "interpolation", "job", "many", "reference",
 ]  # fmt: skip
 ONLY_IN = {
