@@ -15,6 +15,7 @@ from typing import Any
 import numpy as np
 
 from localcomp.auditsettings import AuditSettings, companions_of
+from localcomp.errors import BadInput, Problem
 from localcomp.evidence import Array, Findings, Table, log_ratio
 from localcomp.inputs import StateFile
 from localcomp.shells import FirstMinimum, FixedMultiple, ShellRule, WellEdge
@@ -77,6 +78,9 @@ def plan_audit(study: Study, settings: AuditSettings) -> AuditPlan:
     """What to solve for an audit of this study."""
     closures = (study.closures[0], *(settings.companions or companions_of(study.closures)))
     main = tuple(case for case in study.cases if case.closure == closures[0])
+    if len({case.mixture.species for case in main}) > 1:
+        allowed = "one number of species for all mixtures; audit binaries and ternaries in studies of their own"
+        raise BadInput([Problem(str(study.path), "[[mixtures]]", "", allowed)])
     rules = [r for r in (WellEdge(), FirstMinimum(), FixedMultiple(1.5)) if not _same_shell(r, study.rule, main)]
     return AuditPlan(study, closures, tuple(rules), main, _ternaries(study, main))
 

@@ -11,6 +11,7 @@ from typing import Any
 
 import numpy as np
 
+from localcomp.errors import BadInput
 from localcomp.store import Store, StoreError
 from localcomp.study import Study, read_study
 from localcomp.sweep import is_solved
@@ -30,7 +31,11 @@ def stored_study(store: Store, directory: Path) -> Study:
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "study.toml"
         path.write_text(text, encoding="utf-8")
-        return read_study(path)
+        try:
+            return read_study(path)
+        except BadInput as error:
+            found = "; ".join(f"{p.key} {p.allowed}" for p in error.problems)
+            raise StoreError(f"{store.path}: the study kept there is damaged ({found})") from None
 
 
 def header(study: Study) -> list[str]:
@@ -39,7 +44,8 @@ def header(study: Study) -> list[str]:
     labels = label_names(study)
     return [
         "closure", "status", *labels, f"temperature ({study.units.temperature_label})", "packing_fraction",
-        "mole_fractions", "center", "neighbor", f"shell_radius ({length})", "coordination_number",
+        "mole_fractions", "center", "neighbor", f"diameter ({length})", f"well_depth ({study.units.temperature_label})",
+        f"shell_radius ({length})", "coordination_number",
         "coordination_number_error", "local_mole_fraction", "neighbor_ratio", "neighbor_ratio_error", "contact_value",
         f"internal_energy ({energy})", "virial_z", "inverse_compressibility", "message",
     ]  # fmt: skip
@@ -61,7 +67,7 @@ def rows_csv(study: Study, results: list[dict[str, Any] | None]) -> str:
     labels = label_names(study)
     for case, result in zip(study.cases, results, strict=True):
         status = "missing" if result is None else result["status"]
-        message = "" if result is None or is_solved(result) else result["message"]
+        message = "" if result is None or is_solved(result) else result.get("message", "")
         head = [case.closure, status, *(case.labels.get(name, "") for name in labels),
                 repr(case.state.temperature), repr(case.mixture.packing_fraction(case.state)),
                 " ".join(repr(x) for x in case.state.mole_fractions)]  # fmt: skip
@@ -82,7 +88,11 @@ def rows_csv(study: Study, results: list[dict[str, Any] | None]) -> str:
                         repr(result["virial_z"]),
                         repr(result["inverse_compressibility"]),
                     ]  # fmt: skip
-                writer.writerow([*head, center, neighbor, *numbers, message])
+                pair = (
+                    repr(float(case.mixture.pairs.diameter[i, j])),
+                    repr(float(case.mixture.pairs.well_depth[i, j])),
+                )
+                writer.writerow([*head, center, neighbor, *pair, *numbers, message])
     return buffer.getvalue()
 
 

@@ -158,7 +158,16 @@ class Store:
             except sqlite3.Error as error:
                 raise self._problem(error) from None
             for key in part:
-                yield json.loads(found[key]) if key in found else None
+                yield self._read(key, found[key]) if key in found else None
+
+    def _read(self, key: str, text: str) -> dict[str, Any]:
+        try:
+            result = json.loads(text)
+        except ValueError:
+            result = None
+        if not isinstance(result, dict) or "status" not in result:
+            raise StoreError(f"{self.path}: is damaged (state {key[:12]}...); it is left as it is, use another --out")
+        return result
 
     def note(self, name: str, value: str) -> None:
         """Remember a line of text, e.g. the study file."""

@@ -196,6 +196,9 @@ def _mixtures(
         k_values: list[float | None] = [None]
         if _plain_k(table):
             k_values = list(values(table, "k", "numbers below 1", lambda v: -10.0 <= v < 1.0, [0.0]))
+            if not k_values:  # the other mistakes of the table are worth telling too
+                rest = {key: value for key, value in table.content.items() if key != "k"}
+                read_mixture(Table(file, "pair", rest, problems))
         out = []
         for k in k_values:
             inner = dict(table.content)
@@ -214,7 +217,9 @@ def _mixtures(
         problems.append(Problem(file, "[[mixtures]]", "", "write each mixture as a [[mixtures]] table"))
         return []
     found = [read_mixture(Table(file, "mixtures", entry, problems)) for entry in content]
-    return [(m, {"mixture": " + ".join(m.names)}) for m in found if m is not None]
+    return [
+        (m, {"mixture": " + ".join(m.names), "mixture_number": n + 1}) for n, m in enumerate(found) if m is not None
+    ]
 
 
 def _plain_k(table: Table) -> bool:
@@ -260,7 +265,18 @@ def _expand(
     packing = values(table, "packing_fraction", f"numbers inside (0, {MAX_PACKING})", lambda v: 0.0 < v < MAX_PACKING)
     reference = table.word("temperature_reference", REFERENCES, "mean" if kind == "class" else "absolute")
     closures = _closures(table)
-    compositions = _compositions(table, kind, mixtures)
+    incomplete = before > 0 or not mixtures  # a mixture that could not be read may have had any number of species
+    sizes = set() if incomplete else {mixture.species for mixture, _ in mixtures}
+    compositions = _compositions(table, sizes)
+    for mixture, _ in mixtures:
+        if temperature_unit(mixture, reference) <= 0.0:
+            table.complain(
+                "temperature_reference",
+                reference,
+                f"the depth it names is {temperature_unit(mixture, reference):g}; take another one of: "
+                f"{', '.join(REFERENCES)}",
+            )
+            break
     if len(table.problems) > before or not mixtures:
         return (), closures
     count = len(closures) * len(mixtures) * len(packing) * len(compositions) * len(temperatures)
@@ -279,6 +295,8 @@ def _cases(
     for closure, (mixture, labels), eta, fractions, reduced in itertools.product(
         closures, mixtures, packing, compositions, temperatures
     ):
+        if len(fractions) != mixture.species:
+            continue
         unit = temperature_unit(mixture, reference)
         try:
             state = State(reduced * unit, fractions, packing_fraction=eta)
@@ -310,11 +328,9 @@ def _closures(table: Table) -> tuple[str, ...]:
     return tuple(dict.fromkeys(names))
 
 
-def _compositions(
-    table: Table, kind: str, mixtures: list[tuple[Mixture, dict[str, float | str]]]
-) -> list[tuple[float, ...]]:
-    """Mole fractions: `composition` (of the first of two species) or `mole_fractions` (rows)."""
-    sizes = {mixture.species for mixture, _ in mixtures} or {2}
+def _compositions(table: Table, sizes: set[int]) -> list[tuple[float, ...]]:
+    """Mole fractions: `composition` (of the first of two species) or `mole_fractions` (rows, each for the mixtures
+    with as many species); `sizes` empty when they are not known."""
     if "mole_fractions" in table.content:
         raw = table.content["mole_fractions"]
         rows = raw if isinstance(raw, list) and raw and all(isinstance(r, list) for r in raw) else [raw]
@@ -322,12 +338,18 @@ def _compositions(
         for row in rows:
             numbers = [as_number(v) for v in row] if isinstance(row, list) else [None]
             good = [v for v in numbers if v is not None and 0.0 <= v <= 1.0]
-            if len(good) != len(numbers) or {len(good)} != sizes or not math.isclose(sum(good), 1.0, abs_tol=1e-9):
-                table.complain("mole_fractions", row, f"rows of {sorted(sizes)} numbers in [0, 1] that sum to 1")
+            fits = not sizes or len(good) in sizes
+            if len(good) != len(numbers) or not fits or not math.isclose(sum(good), 1.0, abs_tol=1e-9):
+                lengths = " or ".join(map(str, sorted(sizes))) if sizes else "as many as species"
+                table.complain("mole_fractions", row, f"rows of {lengths} numbers in [0, 1] that sum to 1")
                 return []
             out.append(tuple(good))
+        without = sizes - {len(row) for row in out}
+        if without:
+            table.complain("mole_fractions", raw, f"no row has {min(without)} numbers, as a mixture needs")
+            return []
         return out
-    if sizes != {2}:
+    if sizes - {2}:
         table.missing("mole_fractions", "rows of mole fractions, one number per species")
         return []
     found = values(

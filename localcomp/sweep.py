@@ -21,7 +21,7 @@ from localcomp.executors import worker_deaths
 from localcomp.neighbors import count_neighbors
 from localcomp.report import clean
 from localcomp.shells import ShellRule
-from localcomp.store import Row, Store, row_of
+from localcomp.store import Row, Store, StoreError, row_of
 from localcomp.study import Case, Study
 from ozsolve import Mixture, Solution, State, solve_many
 
@@ -198,13 +198,31 @@ def run(study: Study, store: Store, executor: Executor, workers: int, progress: 
     return SweepResult(total, solved, total - solved, computed, time.monotonic() - began)
 
 
+NUMBERS = frozenset(
+    {
+        "shell_radius", "coordination_numbers", "coordination_errors", "local_mole_fractions", "neighbor_ratios",
+        "ratio_errors", "well_integrals", "contact_values", "internal_energy", "virial_z", "inverse_compressibility",
+        "relative_error",
+    }
+)  # fmt: skip
+"""What a solved state has."""
 SOLVED = ("solved", "accuracy_not_reached")
 """Statuses of stored states that have numbers."""
 
 
 def is_solved(result: dict[str, Any]) -> bool:
-    """Whether a stored result has numbers."""
-    return "coordination_numbers" in result
+    """Whether a stored result has numbers.
+
+    Raises
+    ------
+    StoreError
+        If it says so but has not.
+    """
+    if result["status"] not in SOLVED:
+        return False
+    if not result.keys() >= NUMBERS:
+        raise StoreError(f"the store is damaged: a solved state lacks {min(NUMBERS - result.keys())}")
+    return True
 
 
 def _pending(study: Study, all_units: list[tuple[list[str], list[Case]]], known: dict[str, str]) -> Iterator[Unit]:

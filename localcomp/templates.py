@@ -72,7 +72,8 @@ k = [0.0, 0.1]                           # eps_12 = (1 - k) sqrt(eps_1 eps_2)
 well_range = 1.5
 
 # Instead of [class]: one [pair] (names, diameter, well_depth, ... as in a state file; k may be a
-# list), or any number of [[mixtures]] with two or more species and mole_fractions below.
+# list), or any number of [[mixtures]] with two or more species and mole_fractions below
+# (each row goes with the mixtures of as many species).
 
 [conditions]
 temperature = { from = 1.5, to = 3.0, steps = 4 }

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import pytest
 
+from localcomp.classtable import stored_study
 from localcomp.store import Row, Store, StoreError, row_of
 
 
@@ -114,3 +115,21 @@ def test_a_store_without_a_table_is_refused_and_left_alone(tmp_path: Path, name:
     with pytest.raises(StoreError, match=f"damaged .no table {name}"):
         Store(path)
     assert path.read_bytes() == before
+
+
+@pytest.mark.parametrize("text", ['{"status": "sol', "[1, 2]", "{}"])
+def test_a_damaged_result_is_named_and_left_alone(tmp_path: Path, text: str) -> None:
+    path = tmp_path / "s.sqlite"
+    with Store(path) as store:
+        store.add([("key", "solved", text)])
+    with Store(path) as store, pytest.raises(StoreError, match="damaged"):
+        list(store.results(["key"]))
+    with Store(path) as store:
+        assert store.known() == {"key": "solved"}
+
+
+def test_a_damaged_study_names_the_store(tmp_path: Path) -> None:
+    with Store(tmp_path / "s.sqlite") as store:
+        store.note("study", "[conditions\n")
+        with pytest.raises(StoreError, match=r"s\.sqlite: the study kept there is damaged"):
+            stored_study(store, tmp_path)

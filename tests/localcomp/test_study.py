@@ -133,3 +133,55 @@ def test_a_class_too_large_to_build_is_refused_before_it_is_built(tmp_path: Path
     )
     with pytest.raises(BadInput, match="1000000000 pairs; up to 1000000"):
         read_study(path)
+
+
+MIXED = """\
+[[mixtures]]
+names = ["a", "b"]
+diameter = [1.0, 1.2]
+well_depth = [1.0, 1.5]
+[[mixtures]]
+names = ["a", "b", "c"]
+diameter = [1.0, 1.2, 1.4]
+well_depth = [1.0, 1.5, 1.2]
+[[mixtures]]
+names = ["a", "b"]
+diameter = [1.0, 1.2]
+well_depth = [1.0, 1.5]
+k = 0.1
+[conditions]
+temperature = 2.0
+packing_fraction = 0.4
+mole_fractions = [[0.3, 0.7], [0.2, 0.3, 0.5]]
+"""
+
+
+def test_rows_of_mole_fractions_go_with_mixtures_of_their_length(tmp_path: Path) -> None:
+    found = study(tmp_path, MIXED)
+    assert [len(case.state.mole_fractions) for case in found.cases] == [2, 3, 2]
+    assert [case.labels["mixture_number"] for case in found.cases] == [1, 2, 3]
+    with pytest.raises(BadInput, match="no row has 3 numbers"):
+        study(tmp_path, MIXED.replace(", [0.2, 0.3, 0.5]", ""))
+    with pytest.raises(BadInput, match="rows of 2 or 3 numbers"):
+        study(tmp_path, MIXED.replace("[0.2, 0.3, 0.5]", "[0.5, 0.2, 0.2, 0.1]"))
+
+
+def test_a_mistake_in_a_mixture_is_not_blamed_on_its_mole_fractions(tmp_path: Path) -> None:
+    with pytest.raises(BadInput) as error:
+        study(tmp_path, MIXED.replace("[1.0, 1.2, 1.4]", "[1.0, 1.2, -1.4]"))
+    assert len(error.value.problems) == 1
+    assert "diameter" in error.value.problems[0].key
+
+
+def test_a_pair_with_a_bad_k_tells_its_other_mistakes_too(tmp_path: Path) -> None:
+    text = "[pair]\nk = 2\ndiameter = [1.0, -1.0]\nwell_depth = [1.0, 1.0]\n"
+    with pytest.raises(BadInput) as error:
+        study(tmp_path, text + "[conditions]\ntemperature = 2\npacking_fraction = 0.4\ncomposition = 0.5\n")
+    assert {p.key.split()[-1] for p in error.value.problems} == {"k", "diameter"}
+
+
+def test_a_reference_without_depth_is_named(tmp_path: Path) -> None:
+    text = "[class]\nsize_ratio = 1.2\nenergy_ratio = 0.0\n[conditions]\ntemperature = 2\npacking_fraction = 0.4\n"
+    with pytest.raises(BadInput) as error:
+        study(tmp_path, text + 'composition = 0.5\ntemperature_reference = "second"\n')
+    assert [p.key.split()[-1] for p in error.value.problems] == ["temperature_reference"]

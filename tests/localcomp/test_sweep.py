@@ -7,6 +7,7 @@ import io
 import random
 import signal
 import subprocess
+import sys
 import time
 from concurrent.futures import BrokenExecutor, Executor, Future, wait
 from pathlib import Path
@@ -16,15 +17,16 @@ import pytest
 
 from localcomp import executors
 from localcomp.executors import SerialExecutor, pool
-from localcomp.store import Store
+from localcomp.store import Store, StoreError
 from localcomp.study import read_study
-from localcomp.sweep import AHEAD, UNIT_SIZE, WorkerLost, is_solved
+from localcomp.sweep import AHEAD, NUMBERS, UNIT_SIZE, WorkerLost, is_solved
 from localcomp.sweep import run as run_sweep
 from tests.localcomp.sweeping import command, half_a_result, run, short_work, table_bytes, write_study
 
 MANY = "{ from = 0.02, to = 0.98, steps = 21 }"
 SIZES = "[1.0, 1.2, 1.4, 1.6]"
 KILLS = 10
+WORKERS = 2
 
 
 def test_a_sweep_runs_resumes_and_is_idle_when_finished(tmp_path: Path) -> None:
@@ -47,34 +49,48 @@ def test_a_changed_study_computes_only_what_is_new(tmp_path: Path) -> None:
     assert "48 computed now" in more.stdout
 
 
+def batches(log: Path) -> list[str]:
+    """Work units begun so far, by their first key."""
+    return log.read_text().split() if log.exists() else []
+
+
 def test_killed_ten_times_and_resumed_gives_the_same_table_bit_for_bit(tmp_path: Path) -> None:
+    """Ten kills -9, each at a random moment after the sweep has begun to work and before it is done."""
     study = write_study(tmp_path / "study.toml", SIZES, MANY)
     states = len(read_study(study).cases)
-    assert states >= 2000
-    undisturbed = run("sweep", study, "--out", tmp_path / "calm", "--workers", "2")
-    assert undisturbed.returncode == 0, undisturbed.stderr
-    rng = random.Random(20240607)
-    stored = 0
-    redone = 0
+    assert states > 2000
+    assert run("sweep", study, "--out", tmp_path / "calm", "--workers", "2").returncode == 0
+    rng = random.Random(20261201)
+    log, results = tmp_path / "log", tmp_path / "rough"
+    stored, found_working, lost = 0, 0, []
     for _ in range(KILLS):
+        log.unlink(missing_ok=True)
         process = subprocess.Popen(
-            command("sweep", study, "--out", tmp_path / "rough", "--workers", "2"),
+            [sys.executable, "-m", "tests.localcomp.logged_sweep", str(study), str(results), str(log)],
             stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
         )  # fmt: skip
-        time.sleep(rng.uniform(0.3, 1.6))
+        deadline = time.monotonic() + 60
+        while not batches(log) and process.poll() is None and time.monotonic() < deadline:
+            time.sleep(0.005)
+        time.sleep(rng.uniform(0.0, 0.25))
+        found_working += process.poll() is None
         process.send_signal(signal.SIGKILL)
         process.wait()
-        if (tmp_path / "rough" / "states.sqlite").exists():
-            with Store(tmp_path / "rough" / "states.sqlite") as store:
-                now = len(store.known())
-            assert now >= stored
-            redone += now == stored
-            stored = now
-    last = run("sweep", study, "--out", tmp_path / "rough", "--workers", "2")
+        time.sleep(0.7)  # its workers notice within half a second
+        with Store(results / "states.sqlite") as store:
+            known = store.known()
+        assert len(known) >= stored
+        stored = len(known)
+        lost.append(sum(key not in known for key in batches(log)))
+    assert found_working == KILLS
+    assert 0 < stored < states
+    assert max(lost) <= 2 * WORKERS  # a batch in work each, and for milliseconds one just handed over
+    assert sum(lost) <= KILLS * WORKERS
+    last = run("sweep", study, "--out", results, "--workers", "2")
     assert last.returncode == 0, last.stderr
     computed = int(last.stdout.split(" computed now")[0].rsplit(" ", 1)[-1])
-    assert computed == states - stored  # nothing stored is computed again: only batches in flight were lost
-    assert table_bytes(tmp_path / "rough") == table_bytes(tmp_path / "calm")
+    assert computed == states - stored  # nothing stored is computed again
+    assert table_bytes(results) == table_bytes(tmp_path / "calm")
 
 
 def test_an_interrupt_keeps_what_is_stored(tmp_path: Path) -> None:
@@ -220,7 +236,9 @@ def test_lost_work_is_bounded() -> None:
 
 
 def test_results_say_whether_they_have_numbers() -> None:
-    assert is_solved({"status": "solved", "coordination_numbers": [[1.0]]})
+    assert is_solved({"status": "solved", **dict.fromkeys(NUMBERS)})
+    with pytest.raises(StoreError, match="virial_z"):
+        is_solved({"status": "solved", **dict.fromkeys(NUMBERS - {"virial_z"})})
     assert not is_solved({"status": "branch_end"})
 
 
