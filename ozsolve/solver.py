@@ -150,6 +150,11 @@ def _climb(fluid: Fluid, closure: Closure, accuracy: float) -> _Ladder:
     grid = first_grid(fluid, accuracy)
     rough_rule = StoppingRule(COARSE_TOLERANCE_FACTOR * tolerance)
     coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
+    if coarse.status is not Status.SOLVED:
+        # The equations on a coarse grid can have a branch end of their own, short of the real one (seen with
+        # HNC in dense fluids): no state is called without solution before the fine spacing says so too.
+        grid = Grid(grid.spacing / REFINEMENT, REFINEMENT * grid.points)
+        coarse = find_root(fluid, grid, closure, rough_rule, stepper, counters)
     while (
         coarse.status is Status.SOLVED
         and _tail(coarse) > TAIL_SHARE * accuracy

@@ -13,8 +13,9 @@ from ozsolve.equations import Equations
 from ozsolve.iteration import iterate
 from ozsolve.newton import largest_real_eigenvalue
 from ozsolve.oz import pair_index
-from ozsolve.root import bridge_function
+from ozsolve.root import Counters, bridge_function, find_root
 from ozsolve.solution import reduced_fluid
+from ozsolve.solver import first_grid
 from ozsolve.stopping import StoppingRule
 from tests.problems import random_liquids
 
@@ -85,7 +86,7 @@ def test_a_false_root_is_recognised() -> None:
     """Cold starts far below the branch end: whatever an iteration converges to there is not accepted."""
     state = State(1.0, (0.5, 0.5), packing_fraction=0.40)
     fluid, _ = reduced_fluid(DEMIXING, state)
-    grid = solve(DEMIXING, state, closure="py", on_failure="return").fine.equations.grid
+    grid = first_grid(fluid, 1e-5)
     equations = Equations(fluid, grid, PY)
     rng = np.random.default_rng(4)
     converged = 0
@@ -135,3 +136,23 @@ def test_work_is_bounded_and_the_end_has_a_name() -> None:
         assert failed.stats.steps < 20_000
         assert 0.6 < failed.branch_end_temperature < 3.0
         assert failed.status.sentence in failed.message
+
+
+DENSE = [
+    (Mixture(1.0, 0.0), State(1.0, packing_fraction=0.52), 1e-5),
+    (Mixture([1.0, 1.5], [0.0, 0.0]), State(1.0, (0.5, 0.5), packing_fraction=0.48), 1e-4),
+]
+"""Hypernetted chain; on the first coarse grid for these accuracies the discrete equations have a branch end of their own."""
+
+
+@pytest.mark.parametrize(("mixture", "state", "accuracy"), DENSE, ids=["default", "1e-4"])
+def test_a_branch_end_of_the_coarse_grid_alone_is_no_verdict(mixture: Mixture, state: State, accuracy: float) -> None:
+    """The answer is the one that a finer first grid gives."""
+    found = solve(mixture, state, closure="hnc", accuracy=accuracy)
+    check_physical(found)
+    finer = solve(mixture, state, closure="hnc", accuracy=1e-7)
+    assert found.virial_z == pytest.approx(finer.virial_z, rel=1e-3)
+    fluid, _ = reduced_fluid(mixture, state)
+    rule, grid = StoppingRule(1e-7), first_grid(fluid, accuracy)
+    alone = find_root(fluid, grid, get_closure("hnc"), rule, Anderson(), Counters())
+    assert alone.status is not Status.SOLVED, "the coarse grid alone copes: the test has lost its subject"
