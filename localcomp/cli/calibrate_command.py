@@ -9,7 +9,9 @@ import typer
 
 
 def calibrate(
-    file: Annotated[Path, typer.Argument(metavar="FILE", help="Pure-liquid file (TOML) with a [fluid] table.")],
+    file: Annotated[
+        Path, typer.Argument(metavar="FILE", help="Pure-liquid file (TOML); `localcomp new DIR` writes one.")
+    ],
     json: Annotated[bool, typer.Option("--json", help="Print one JSON object and nothing else.")] = False,
 ) -> None:
     """Find sigma and eps/k of a pure liquid from its molar volume, energy and pressure."""

@@ -40,6 +40,8 @@ def state(
 
     check_writable("--csv", csv, file)
     check_writable("--plot", plot, file, FIGURE_SUFFIXES)
+    if csv is not None and plot is not None and csv.resolve() == plot.resolve():
+        raise BadInput([Problem(str(csv), "--csv", "", "is the name given to --plot too; name another file")])
     request = _overridden(read_state(file), closure, accuracy)
     report = report_state(request)
     others = all_closures(request) if compare_closures else []

@@ -145,3 +145,9 @@ def test_a_closed_pipe_and_a_plain_terminal_are_no_tragedy(write):
     plain = shell("state", path, PYTHONIOENCODING="ascii")
     assert plain.returncode == 0
     assert "2.978 ? 0.002" in plain.stdout
+
+
+def test_help_keeps_its_words(run):
+    """Square brackets in help texts would be taken for markup and vanish."""
+    assert " a  table" not in run("calibrate", "--help").out
+    assert "localcomp new DIR" in run("calibrate", "--help").out

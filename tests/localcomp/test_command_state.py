@@ -205,3 +205,13 @@ def test_an_interrupt_is_quiet(write, run, monkeypatch):
     ran = run("state", write(STATE))
     assert ran.status == 130
     assert "Traceback" not in ran.err
+
+
+def test_table_and_figure_cannot_share_a_name(write, run, tmp_path):
+    same, other = tmp_path / "out.png", tmp_path / "out.csv"
+    ran = run("state", write(STATE), "--csv", same, "--plot", tmp_path / "." / "out.png")
+    assert ran.status == 2
+    assert str(same) in ran.err
+    assert "--plot too" in ran.err
+    assert not same.exists()
+    assert run("state", write(STATE), "--csv", other, "--plot", same).status == 0
