@@ -142,7 +142,7 @@ DENSE = [
     (Mixture(1.0, 0.0), State(1.0, packing_fraction=0.52), 1e-5),
     (Mixture([1.0, 1.5], [0.0, 0.0]), State(1.0, (0.5, 0.5), packing_fraction=0.48), 1e-4),
 ]
-"""Hypernetted chain; on the first coarse grid for these accuracies the discrete equations have a branch end of their own."""
+"""Hypernetted chain; on the first coarse grid for these accuracies the equations have a branch end of their own."""
 
 
 @pytest.mark.parametrize(("mixture", "state", "accuracy"), DENSE, ids=["default", "1e-4"])
