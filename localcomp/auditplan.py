@@ -18,7 +18,7 @@ from localcomp.auditsettings import AuditSettings, companions_of
 from localcomp.errors import BadInput, Problem
 from localcomp.evidence import Array, Findings, Table, log_ratio
 from localcomp.inputs import StateFile
-from localcomp.shells import FirstMinimum, FixedMultiple, ShellRule, WellEdge
+from localcomp.shells import FirstMinimum, FixedMultiple, ShellRule, WellEdge, informative_multiple
 from localcomp.store import Store
 from localcomp.study import Case, Study
 from localcomp.sweep import Progress, is_solved, run
@@ -81,7 +81,8 @@ def plan_audit(study: Study, settings: AuditSettings) -> AuditPlan:
     if len({case.mixture.species for case in main}) > 1:
         allowed = "one number of species for all mixtures; audit binaries and ternaries in studies of their own"
         raise BadInput([Problem(str(study.path), "[[mixtures]]", "", allowed)])
-    rules = [r for r in (WellEdge(), FirstMinimum(), FixedMultiple(1.5)) if not _same_shell(r, study.rule, main)]
+    others = (WellEdge(), FirstMinimum(), informative_multiple(main[0].mixture) if main else FixedMultiple())
+    rules = [r for r in others if not _same_shell(r, study.rule, main)]
     return AuditPlan(study, closures, tuple(rules), main, _ternaries(study, main))
 
 

@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from localcomp.errors import NoAnswer
-from localcomp.shells import FirstMinimum, FixedMultiple, ShellRule, WellEdge
+from localcomp.shells import FirstMinimum, ShellRule, WellEdge, informative_multiple
 from ozsolve import Solution
 
 Array = NDArray[np.float64]
@@ -73,6 +73,9 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
     rule = rule if rule is not None else WellEdge()
     radius = rule.radius(solution)
     integral, bar = solution.shell_integral(radius)
+    moved = rule.uncertainty(solution)
+    if moved.any():
+        bar = bar + 4.0 * np.pi * _g_at(solution, radius) * radius**2 * moved
     _refuse_empty(solution, integral)
     rho = solution.densities
     counts = rho[None, :] * integral
@@ -89,6 +92,15 @@ def count_neighbors(solution: Solution, rule: ShellRule | None = None) -> Neighb
     for table in tables:
         table.setflags(write=False)
     return Neighbors(rule, *tables)
+
+
+def _g_at(solution: Solution, radius: Array) -> Array:
+    """g_ij at L_ij, the larger side of a step, shape (s, s)."""
+    size = solution.mixture.species
+    place = np.searchsorted(solution.r, radius)
+    pick = [np.minimum(np.maximum(place + n, 0), len(solution.r) - 1) for n in (-1, 0)]
+    i, j = np.indices((size, size))
+    return np.asarray(np.maximum(solution.g_r[i, j, pick[0]], solution.g_r[i, j, pick[1]]))
 
 
 def _refuse_empty(solution: Solution, integral: Array) -> None:
@@ -131,7 +143,7 @@ def shell_sensitivity(solution: Solution, multiple: float = 1.5) -> ShellSensiti
     """
     results: list[Neighbors] = []
     missing: list[str] = []
-    for rule in (WellEdge(), FirstMinimum(), FixedMultiple(multiple)):
+    for rule in (WellEdge(), FirstMinimum(), informative_multiple(solution.mixture, multiple)):
         try:
             results.append(count_neighbors(solution, rule))
         except NoAnswer as reason:

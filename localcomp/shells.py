@@ -7,10 +7,10 @@ from typing import ClassVar, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline
+from scipy.interpolate import BSpline, PPoly, make_interp_spline
 
 from localcomp.errors import NoAnswer
-from ozsolve import Solution
+from ozsolve import Mixture, Solution
 
 Array = NDArray[np.float64]
 
@@ -32,6 +32,10 @@ class ShellRule(Protocol):
         """L_ij, shape (s, s), in the solution's length unit."""
         ...
 
+    def uncertainty(self, solution: Solution) -> Array:
+        """Numerical error of L_ij, shape (s, s)."""
+        ...
+
 
 @dataclass(frozen=True)
 class WellEdge:
@@ -42,6 +46,9 @@ class WellEdge:
 
     def radius(self, solution: Solution) -> Array:
         return solution.mixture.pairs.well_edge
+
+    def uncertainty(self, solution: Solution) -> Array:
+        return np.zeros_like(solution.mixture.pairs.well_edge)
 
 
 @dataclass(frozen=True)
@@ -65,6 +72,9 @@ class FixedMultiple:
     def radius(self, solution: Solution) -> Array:
         return self.multiple * solution.mixture.pairs.diameter
 
+    def uncertainty(self, solution: Solution) -> Array:
+        return np.zeros_like(solution.mixture.pairs.diameter)
+
 
 @dataclass(frozen=True)
 class FirstMinimum:
@@ -78,59 +88,96 @@ class FirstMinimum:
     description: ClassVar[str] = "first minimum of g"
 
     def radius(self, solution: Solution) -> Array:
+        return self._table(solution, rough=False)
+
+    def uncertainty(self, solution: Solution) -> Array:
+        """Error of the slope of g between the two grids, near the minimum, over its curvature there.
+
+        The two minima themselves may agree by accident. Never more than `WINDOW` grid steps.
+        """
+        fine = self.radius(solution)
+        out = np.zeros_like(fine)
+        curves = [solution.g_segments(rough=rough) for rough in (False, True)]
+        step = float(curves[1][0][1] - curves[1][0][0])
+        size = solution.mixture.species
+        for i in range(size):
+            for j in range(i, size):
+                core = float(solution.mixture.pairs.diameter[i, j])
+                edge, limit = float(solution.mixture.pairs.well_edge[i, j]), float(fine[i, j])
+                if limit == edge:
+                    continue
+                side, low, high = (1, core, edge) if limit < edge else (2, edge, REACH * core)
+                slopes = [_spline(curve[0], curve[side][i, j], low, high).derivative() for curve in curves]
+                near = np.linspace(max(low, limit - WINDOW * step), min(high, limit + WINDOW * step), 4 * WINDOW + 1)
+                gap = float(np.max(np.abs(slopes[0](near) - slopes[1](near))))
+                curvature = max(float(slopes[0](limit, 1)), 1e-300)
+                out[i, j] = out[j, i] = min(gap / curvature, WINDOW * step)
+        return out
+
+    def _table(self, solution: Solution, *, rough: bool) -> Array:
+        r, inside, beyond = solution.g_segments(rough=rough)
         size = solution.mixture.species
         out = np.empty((size, size))
         for i in range(size):
             for j in range(i, size):
-                out[i, j] = out[j, i] = self._pair(solution, i, j)
+                core = float(solution.mixture.pairs.diameter[i, j])
+                edge = float(solution.mixture.pairs.well_edge[i, j])
+                found = _first_minimum(r, inside[i, j], beyond[i, j], core, edge)
+                if found is None:
+                    raise NoAnswer(
+                        f"g_{i + 1}{j + 1}(r) has no minimum between contact and {REACH * core:.3g}: "
+                        "the first-minimum shell does not exist at this state; use another shell rule"
+                    )
+                out[i, j] = out[j, i] = found
         return out
 
-    def _pair(self, solution: Solution, i: int, j: int) -> float:
-        core = float(solution.mixture.pairs.diameter[i, j])
-        edge = float(solution.mixture.pairs.well_edge[i, j])
-        inner, outer = (float(table[i, j]) for table in solution.edge_values)
-        reach = 4.0 * core
-        found = _first_minimum(solution, i, j, core, edge, float(solution.contact_values[i, j]), inner)
-        if found is not None:
-            return found
-        r, g = solution.r, solution.g_r[i, j]
-        beyond = (r > edge) & (r < reach)
-        radii = np.concatenate(([edge], r[beyond]))
-        values = np.concatenate(([outer], g[beyond]))
-        spline = CubicSpline(radii, values)
-        if inner > outer and float(spline(edge, 1)) >= 0.0:
-            return edge
-        minimum = _smooth_minimum(spline, radii)
-        if minimum is None:
-            raise NoAnswer(
-                f"g_{i + 1}{j + 1}(r) has no minimum between contact and {reach:.3g}: "
-                "the first-minimum shell does not exist at this state; use another shell rule"
-            )
-        return minimum
+
+REACH = 4.0
+"""Minima are looked for up to here, in pair diameters."""
+WINDOW = 3
+"""Coarse grid steps about a minimum in which the error of the slope is read."""
+MARGIN = 6
+"""Grid points by which a spline reaches beyond the radii it is used for."""
 
 
-def _first_minimum(
-    solution: Solution, i: int, j: int, core: float, edge: float, contact: float, inner: float
-) -> float | None:
-    """A smooth minimum inside the well, if there is one."""
-    r, g = solution.r, solution.g_r[i, j]
-    inside = (r > core) & (r < edge)
-    radii = np.concatenate(([core], r[inside], [edge]))
-    values = np.concatenate(([contact], g[inside], [inner]))
-    if len(radii) < 4:
-        return None
-    keep = np.concatenate(([True], np.diff(radii) > 1e-9 * core))
-    return _smooth_minimum(CubicSpline(radii[keep], values[keep]), radii)
+def _first_minimum(r: Array, inside: Array, beyond: Array, core: float, edge: float) -> float | None:
+    """The smallest radius beyond contact where g has a minimum, the well edge included.
+
+    Each side of the edge is smooth and is taken from its own continuation, so that a spline of fifth
+    degree holds up to the edge.
+    """
+    found = _smooth_minimum(r, inside, core, edge)
+    if found is not None:
+        return found
+    spline = _spline(r, beyond, edge, REACH * core)
+    steps_down = float(_spline(r, inside, core, edge)(edge)) > float(spline(edge))
+    if steps_down and float(spline(edge, 1)) >= 0.0:
+        return edge
+    return _smooth_minimum(r, beyond, edge, REACH * core)
 
 
-def _smooth_minimum(spline: CubicSpline, radii: Array) -> float | None:
-    turning = spline.derivative().roots(extrapolate=False)
-    for radius in np.sort(turning):
-        if radii[0] < radius < radii[-1] and float(spline(radius, 2)) > 0.0:
+def _spline(r: Array, values: Array, low: float, high: float) -> BSpline:
+    first = max(int(np.searchsorted(r, low)) - MARGIN, 0)
+    last = int(np.searchsorted(r, high)) + MARGIN
+    return make_interp_spline(r[first:last], values[first:last], k=5)
+
+
+def _smooth_minimum(r: Array, values: Array, low: float, high: float) -> float | None:
+    spline = _spline(r, values, low, high)
+    slope = spline.derivative()
+    for radius in np.sort(PPoly.from_spline(slope).roots(extrapolate=False)):
+        if low < radius < high and float(slope(radius, 1)) > 0.0:
             return float(radius)
     return None
 
 
+def informative_multiple(mixture: Mixture, multiple: float = 1.5) -> FixedMultiple:
+    """A fixed multiple that does not repeat the well edge: `OTHER_MULTIPLE` where every well ends at `multiple`."""
+    repeats = np.allclose(mixture.pairs.well_range, multiple, rtol=1e-9)
+    return FixedMultiple(OTHER_MULTIPLE if repeats else multiple)
+
+
+OTHER_MULTIPLE = 1.35
 RULES = (WellEdge.name, FirstMinimum.name, FixedMultiple.name)
 
 

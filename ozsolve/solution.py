@@ -166,6 +166,25 @@ class Solution:
         g = np.where(r < fluid.edge[0][:, None], inside, beyond)
         return self._table(np.where(r < fluid.core[0][:, None], 0.0, g))
 
+    def g_segments(self, *, rough: bool = False) -> tuple[Array, Array, Array]:
+        """Radii, and g as in the well and as beyond it, each continued smoothly through the edges.
+
+        Parameters
+        ----------
+        rough : bool
+            On the coarser grid that the error bars come from.
+
+        Returns
+        -------
+        r : ndarray, shape (m,)
+            Length unit.
+        inside, beyond : ndarray, shape (s, s, m)
+            g is `inside` from the core to the well edge and `beyond` from there on; meaningless in the core.
+        """
+        level = self.coarse if rough and self.coarse is not None else self.fine
+        inside, beyond = g_segments(level.equations, level.x)
+        return level.equations.grid.r * self.length, self._table(inside), self._table(beyond)
+
     @cached_property
     def h_r(self) -> Array:
         """Total correlation g - 1, shape (s, s, m)."""

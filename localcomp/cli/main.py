@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import errno
 import io
 import os
 import sys
-from typing import Annotated
+from typing import Annotated, NoReturn
 
 import typer
 
@@ -54,6 +55,7 @@ def run() -> None:
     """Entry point: turns every failure into a message and an exit status, never a traceback."""
     if isinstance(sys.stdout, io.TextIOWrapper):  # a character the terminal cannot show is no reason to stop
         sys.stdout.reconfigure(errors="replace")
+    os.environ["MPLBACKEND"] = "agg"  # figures go to files; what the environment prefers is for windows
     try:
         app()
     except BadInput as error:
@@ -72,12 +74,23 @@ def run() -> None:
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         sys.exit(1)
-    except Exception as error:  # the last net: a user gets a sentence, a developer asks for the rest
-        if os.environ.get("LOCALCOMP_TRACEBACK"):
-            raise
-        typer.echo(
-            f"internal error: {type(error).__name__}: {error}\n"
-            "This is a defect of localcomp. Set LOCALCOMP_TRACEBACK=1 and run again to see where.",
-            err=True,
-        )
+    except OSError as error:
+        if error.errno not in (errno.ENOSPC, errno.EIO, errno.EDQUOT):
+            _defect(error)
+        typer.echo(f"error: standard output cannot be written ({error.strerror})", err=True)
+        sys.stdout = io.StringIO()  # what is buffered has nowhere to go
         sys.exit(1)
+    except Exception as error:
+        _defect(error)
+
+
+def _defect(error: Exception) -> NoReturn:
+    """The last net: a user gets a sentence, a developer asks for the rest."""
+    if os.environ.get("LOCALCOMP_TRACEBACK"):
+        raise error
+    typer.echo(
+        f"internal error: {type(error).__name__}: {error}\n"
+        "This is a defect of localcomp. Set LOCALCOMP_TRACEBACK=1 and run again to see where.",
+        err=True,
+    )
+    sys.exit(1)

@@ -14,6 +14,9 @@ from localcomp.report import CAUTION, StateReport, pressure_mpa
 
 WIDTH = 100
 LABEL = 32
+SMALL = 1e-4
+"""Smaller numbers are written with a power of ten."""
+MOST_DIGITS = 12
 
 
 def console() -> Console:
@@ -26,8 +29,13 @@ def with_error(value: float, bar: float) -> str:
     """A number with its error bar in its last digit: 2.97839(2) is 2.97839 +- 0.00002."""
     if not bar > 0.0:
         return f"{value:.6g}"
+    if 0.0 < abs(value) < SMALL and bar < SMALL:
+        power = math.floor(math.log10(abs(value)))
+        return f"{with_error(value / 10.0**power, bar / 10.0**power)}e{power:+03d}"
+    if bar < 10.0**-MOST_DIGITS:
+        return f"{value:.{MOST_DIGITS}g}"
     digits = 0
-    while digits < 9 and bar * 10**digits < 0.95:
+    while digits < MOST_DIGITS and bar * 10**digits < 0.95:
         digits += 1
     return f"{value:.{digits}f}({max(math.ceil(bar * 10**digits - 0.05), 1)})"
 

@@ -65,7 +65,10 @@ def distribution_figure(curves: Sequence[PairCurve], title: str, length_label: s
 
 def short(name: str) -> str:
     """A name that fits into a panel."""
-    return name if len(name) <= LONGEST_NAME else name[: LONGEST_NAME - 1] + "…"
+    if len(name) <= LONGEST_NAME:
+        return name
+    half = LONGEST_NAME // 2
+    return f"{name[:half]}…{name[half + 1 - LONGEST_NAME :]}"  # names that begin alike often differ at their ends
 
 
 def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
@@ -88,7 +91,7 @@ def _panel(axis: Axes, curve: PairCurve, length_label: str) -> None:
         (count_line,) = right.plot(curve.radii, values, color=color, lw=1.4, ls=dash, label=label)
         handles.append(count_line)
         right.plot([curve.shell], [in_shell], "o", ms=4, color=color)
-        if n == 0 or abs(in_shell - counts[0][2]) > 0.005:
+        if in_shell > 0.0 and (n == 0 or abs(in_shell - counts[0][2]) > 0.005):
             upper = n == 0 and len(counts) > 1 and in_shell > counts[1][2]
             right.annotate(
                 f"{in_shell:.2f}",

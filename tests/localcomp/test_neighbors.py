@@ -95,8 +95,7 @@ def test_a_shell_that_does_not_exist_is_said_so() -> None:
         ),
         r=r,
         g_r=np.where(r < 1.0, 0.0, 1.0 + np.exp(-r))[None, None],
-        contact_values=np.array([[1.0 + np.exp(-1.0)]]),
-        edge_values=(np.array([[1.0 + np.exp(-1.5)]]), np.array([[1.0 + np.exp(-1.5)]])),
+        g_segments=lambda *, rough: (r, (1.0 + np.exp(-r))[None, None], (1.0 + np.exp(-r))[None, None]),
     )
     with pytest.raises(NoAnswer, match="no minimum"):
         FirstMinimum().radius(falling)
