@@ -88,7 +88,9 @@ class Audit:
     findings : Findings
     verdicts : tuple of Verdict
     names : tuple of str
-        Species, for pairs in text.
+        Species, for pairs in text, where the states have no names of their own.
+    temperature_unit : str
+        " K", or nothing for kT in the energy unit.
     """
 
     closure: str
@@ -99,6 +101,7 @@ class Audit:
     findings: Findings
     verdicts: tuple[Verdict, ...]
     names: tuple[str, ...]
+    temperature_unit: str = ""
 
     @property
     def states(self) -> int:
@@ -109,6 +112,10 @@ class Audit:
     def failed_states(self) -> int:
         """States without a physical solution."""
         return int(self.states - self.findings.main.solved.sum())
+
+    def species(self, row: int) -> tuple[str, ...]:
+        """Names of the species of one state of the study."""
+        return self.findings.main.species(row, self.names)
 
     def of(self, model: ActivityModel, reading: Reading) -> list[Verdict]:
         """All verdicts of one model under one reading."""
@@ -196,11 +203,13 @@ def _verdict(
 ) -> Verdict:  # fmt: skip
     with np.errstate(invalid="ignore"):
         signed = found.values - claimed
-    usable = np.isfinite(signed)
+    usable = np.isfinite(signed) & np.isfinite(doubt)  # without a known uncertainty nothing is decided
     nan = float("nan")
     if table is None or not usable.any():
-        tested = bool(np.isfinite(found.values).any())
+        tested = bool((np.isfinite(found.values) & np.isfinite(doubt)).any())
         reason = "the model states nothing for energies this large" if tested else test.missing
+        if table is not None and not table.solved.any():
+            reason = "no state has a solution"
         return Verdict(
             model, reading, test, Outcome.UNDECIDED, f"not tested: {reason}", nan, nan, tolerance, nan, nan,
             (nan, nan, nan), {}, found, np.full_like(found.values, nan), doubt,
@@ -232,9 +241,7 @@ def describe_state(table: Table, items: Items, number: int, names: tuple[str, ..
     state["packing_fraction"] = float(table.packing[row])
     center, neighbor = int(items.center[number]), int(items.neighbor[number])
     if center >= 0:
-        known = names if len(names) == table.mole_fractions.shape[1] else tuple(
-            str(i + 1) for i in range(table.mole_fractions.shape[1])
-        )  # fmt: skip
+        known = table.species(row, names)
         state["center"] = known[center]
         if neighbor != center:
             state["neighbor"] = known[neighbor]

@@ -46,7 +46,7 @@ def verdict_grid(audit: Audit) -> VerdictGrid:
 def shown_mixture(audit: Audit) -> int:
     """The mixture line figures show: the one whose ratios are furthest from one."""
     table = audit.findings.main
-    size = np.nanmean(np.abs(np.where(np.isfinite(table.ln_ratio), table.ln_ratio, np.nan)), axis=(1, 2))
+    size = np.abs(table.ln_ratio).mean(axis=(1, 2))
     best, found = 0, -1.0
     for number in np.unique(table.mixture):
         rows = (table.mixture == number) & np.isfinite(size)
@@ -54,6 +54,11 @@ def shown_mixture(audit: Audit) -> int:
         if value > found:
             best, found = int(number), value
     return best
+
+
+def species_of(audit: Audit, number: int) -> tuple[str, ...]:
+    """Names of the species of a mixture."""
+    return audit.species(int(np.flatnonzero(audit.findings.main.mixture == number)[0]))
 
 
 def describe_mixture(audit: Audit, number: int) -> str:
@@ -151,7 +156,7 @@ def ratio_panels(audit: Audit, number: int, uncertainty: Array) -> list[list[Rat
         curves.append((title(model, reading), values))
     together = merged(curves)
     out: list[list[RatioPanel]] = [[], []]
-    first, second = audit.names[0], audit.names[1]
+    first, second = species_of(audit, number)
     for n, (temperature, chosen) in enumerate(rows.items()):
         for direction, (i, j) in enumerate(((0, 1), (1, 0))):
             out[direction].append(
@@ -171,7 +176,7 @@ def _temperature_text(audit: Audit, row: int, temperature: float) -> str:
     reduced = audit.findings.main.labels[row].get("reduced_temperature")
     if isinstance(reduced, float) and abs(reduced - temperature) > 1e-9:
         return f"T* = {reduced:.4g}  (kT/ε_1 = {temperature:.4g})"
-    return f"T = {temperature:.5g}"
+    return f"T = {temperature:.5g}{audit.temperature_unit}"
 
 
 def slope_table(audit: Audit) -> SlopeTable:
@@ -182,6 +187,8 @@ def slope_table(audit: Audit) -> SlopeTable:
     exchange = given.exchange
     x, y, group = [], [], []
     size = change.shape[-1]
+    called = {audit.species(n) for n in range(len(table.labels))}
+    species = called.pop() if len(called) == 1 else tuple(str(i + 1) for i in range(size))
     for i in range(size):
         for j in range(size):
             if i != j:
@@ -189,7 +196,7 @@ def slope_table(audit: Audit) -> SlopeTable:
                 x.append(exchange[good, i, j])
                 y.append(change[good, i, j])
                 equal = np.isclose(table.diameter[good, i, i], table.diameter[good, j, j])
-                direction = f"{audit.names[j]} around {audit.names[i]}"
+                direction = f"{species[j]} around {species[i]}"
                 group += [f"{direction}, {'equal' if same else 'unequal'} sizes" for same in equal]
     claimed: dict[float, list[str]] = {}
     for model, reading in audit.rows():
@@ -258,12 +265,13 @@ def multiplicity_curves(audit: Audit, number: int) -> list[Curve]:
     own = (table.mixture == number) & table.solved
     packing = _middle(table.packing[own])
     exponent = multiplicity(audit.findings)
+    names = species_of(audit, number)
     out = []
     for temperature in _levels(table.temperature[own]):
         rows = _isotherm(audit, number, temperature, packing)
         for i, j in ((0, 1), (1, 0)):
             if np.isfinite(exponent[rows, i, j]).any():
-                label = f"{audit.names[j]} around {audit.names[i]}, T = {temperature:.4g}"
+                label = f"{names[j]} around {names[i]}, T = {temperature:.4g}{audit.temperature_unit}"
                 out.append(Curve(label, table.mole_fractions[rows, 0], exponent[rows, i, j]))
     return out
 

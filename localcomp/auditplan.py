@@ -289,4 +289,5 @@ def _table(cases: Sequence[Case], counts: Array, known: Results, study: Study) -
         np.array(wells),
         np.array(errors),
         tuple(dict(case.labels) for case in cases),
+        tuple(tuple(case.mixture.names) for case in cases),
     )

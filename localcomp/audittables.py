@@ -78,13 +78,14 @@ def neighbors_csv(audit: Audit, study: Study) -> str:
     error = table.ln_error
     size = x.shape[1]
     for n, label in enumerate(table.labels):
+        names = audit.species(n)
         for i in range(size):
             for j in range(size):
                 found = [numbers, fractions, ratio, error, athermal, exchange, exponent, *stated.values()]
                 writer.writerow(
                     [*(label.get(name, "") for name in labels), repr(float(table.temperature[n])),
-                     repr(float(table.packing[n])), " ".join(repr(float(v)) for v in x[n]), audit.names[i],
-                     audit.names[j], *(_number(values[n, i, j]) for values in found)]
+                     repr(float(table.packing[n])), " ".join(repr(float(v)) for v in x[n]), names[i],
+                     names[j], *(_number(values[n, i, j]) for values in found)]
                 )  # fmt: skip
     return buffer.getvalue()
 

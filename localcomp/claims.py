@@ -138,7 +138,10 @@ def boltzmann(findings: Findings) -> Items:
 def athermal_limit(findings: Findings) -> Items:
     """ln R_ij(athermal)."""
     table = findings.main
-    return _items(log_ratio(findings.athermal), table.ln_error, _unlike(table.counts.shape[-1]))
+    error = table.ln_error
+    if np.isfinite(error).any():  # states without a solution often have one without wells: the worst error known
+        error = np.where(np.isfinite(error), error, np.nanmax(error))
+    return _items(log_ratio(findings.athermal), error, _unlike(table.counts.shape[-1]))
 
 
 def product(findings: Findings) -> Items:

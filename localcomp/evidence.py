@@ -42,6 +42,8 @@ class Table:
         Relative numerical error of counts.
     labels : tuple of dict
         What the study calls the state.
+    names : tuple of tuple of str
+        Species of each state; empty: known by their number.
     """
 
     mixture: Index
@@ -54,6 +56,14 @@ class Table:
     well_counts: Array
     error: Array
     labels: tuple[dict[str, Any], ...]
+    names: tuple[tuple[str, ...], ...] = ()
+
+    def species(self, row: int, default: tuple[str, ...] = ()) -> tuple[str, ...]:
+        """Names of the species of one state."""
+        size = self.mole_fractions.shape[1]
+        if self.names:
+            return self.names[row]
+        return default if len(default) == size else tuple(str(i + 1) for i in range(size))
 
     @property
     def ln_ratio(self) -> Array:
@@ -95,7 +105,8 @@ class Table:
                 "error",
             )
         }  # fmt: skip
-        return Table(**picked, labels=tuple(self.labels[int(n)] for n in rows))
+        names = tuple(self.names[int(n)] for n in rows) if self.names else ()
+        return Table(**picked, labels=tuple(self.labels[int(n)] for n in rows), names=names)
 
 
 @dataclass(frozen=True)

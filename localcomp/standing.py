@@ -88,7 +88,7 @@ def _standing(audit: Audit, model: ActivityModel, reading: Reading) -> Standing:
     if costliest is not None and costliest.outcome is Outcome.HOLDS:
         costliest = None
     bad = counts[Outcome.FAILS] + counts[Outcome.STRAINED]
-    split = _best_split(audit.findings.main, tested) if bad else None
+    split = _best_split(audit.findings.main, tested, audit.temperature_unit) if bad else None
     return Standing(model, reading, counts, bad == 0 and counts[Outcome.HOLDS] > 0, costliest, split)
 
 
@@ -112,15 +112,18 @@ def axis_values(table: Table) -> dict[str, Array]:
     return columns
 
 
-def _best_split(table: Table, verdicts: list[Verdict]) -> Split | None:
+def _best_split(table: Table, verdicts: list[Verdict], temperature_unit: str = "") -> Split | None:
     """The cut of one axis that makes most claims hold; of equals, the one that keeps most states."""
     best: tuple[int, float] = (0, 0.0)
     chosen: Split | None = None
     solved = table.solved
     for name, column in axis_values(table).items():
         levels = np.unique(column)
-        cuts = [(column <= v, f"{AXES[name]} <= {v:.4g}") for v in levels[:-1]]
-        cuts += [(column >= v, f"{AXES[name]} >= {v:.4g}") for v in levels[1:]]
+        called, unit = AXES[name], ""
+        if name == "reduced_temperature" and np.allclose(column, table.temperature):
+            called, unit = "T", temperature_unit  # not reduced by anything
+        cuts = [(column <= v, f"{called} <= {v:.4g}{unit}") for v in levels[:-1]]
+        cuts += [(column >= v, f"{called} >= {v:.4g}{unit}") for v in levels[1:]]
         for keep, text in cuts:
             kept = float(keep[solved].mean()) if solved.any() else 0.0
             if kept < LEAST_KEPT:

@@ -65,6 +65,7 @@ def audit(
     judged = findings[plan.closures[0]]
     names = plan.main[0].mixture.names if plan.main else ()
     result = run_audit(judged, settings, plan.closures[0], {c: findings[c] for c in plan.closures[1:]}, names)
+    result = replace(result, temperature_unit=" K" if found.units.real else "")
     ranked = standings(result)
     body = verdicts_json(result, ranked)
     written = _write(out, result, found, [findings[c].main.ln_ratio for c in plan.closures[1:]], body)
@@ -111,7 +112,7 @@ def _write(out: Path, result: Audit, study: Study, others: list, body: dict) -> 
         if result.findings.main.mole_fractions.shape[1] == 2:
             number = curves.shown_mixture(result)
             mixture = curves.describe_mixture(result, number)
-            first, second = result.names[0], result.names[1]
+            first, second = curves.species_of(result, number)
             panels = curves.ratio_panels(result, number, curves.ln_ratio_uncertainty(result, others))
             figures["ratios"] = ratio_figure(panels, f"Neighbour ratios, {mixture}", first)
             implied, real = curves.reciprocity_curves(result, number)

@@ -12,7 +12,7 @@ from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
 from localcomp.figures.ratios import Curve, called
-from localcomp.figures.style import DASHES, GRID, INK, LINES, look
+from localcomp.figures.style import DASHES, GRID, INK, LINES, fit, look
 
 Array = NDArray[np.float64]
 
@@ -92,5 +92,5 @@ def multiplicity_lines(curves: Sequence[Curve], heading: str, species: str) -> F
         axis.set_xlabel(f"mole fraction of {called(species)}")
         axis.set_ylabel("multiplicity m, dimensionless")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper")
-        figure.suptitle(heading, fontsize=10)
+        fit(figure, axis.set_title(heading, fontsize=10, loc="left"), axis)
     return figure

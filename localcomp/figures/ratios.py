@@ -11,7 +11,7 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, NullFormatter
 from numpy.typing import NDArray
 
-from localcomp.figures.style import DASHES, FOUND, GRID, INK, LINES, SECOND, look
+from localcomp.figures.style import DASHES, FOUND, GRID, INK, LINES, SECOND, fit, look
 
 Array = NDArray[np.float64]
 
@@ -168,7 +168,8 @@ def slope_figure(table: SlopeTable, heading: str) -> Figure:
         axis.set_xlabel("β (ε_ij − ε_ii), dimensionless")
         axis.set_ylabel("ln R_ij − ln R_ij (athermal), dimensionless")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", markerscale=1.8)
-        axis.set_title(heading, fontsize=10, loc="left")
+        axis.locator_params(axis="x", nbins=7)
+        fit(figure, axis.set_title(heading, fontsize=10, loc="left"), axis)
     return figure
 
 
@@ -196,5 +197,6 @@ def reciprocity_figure(
         i, j = pair
         axis.set_ylabel(f"pairs counted from {i} / pairs counted from {j}")
         figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper", handlelength=3.2)
-        axis.set_title(heading, fontsize=10, loc="left")
+        fit(figure, axis.yaxis.label, axis)
+        fit(figure, axis.set_title(heading, fontsize=10, loc="left"), axis)
     return figure

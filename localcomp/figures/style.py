@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, cast
 
 import matplotlib
+from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.text import Text
 
 INK = "#22303c"
 FOUND = "#0b6e74"
@@ -46,6 +49,20 @@ def look() -> Iterator[None]:
     """Draw with the shared style, without touching the user's own settings."""
     with matplotlib.rc_context(cast(Any, RC)):
         yield
+
+
+def fit(figure: Figure, text: Text, axis: Axes) -> None:
+    """Break a heading or label into lines no longer than its axis, so that it stays clear of what lies beside it."""
+    words = text.get_text()
+    for _ in range(3):  # more lines leave less room for the axis
+        figure.draw_without_rendering()
+        upright = text.get_rotation() == 90.0
+        have, room = text.get_window_extent(), axis.get_window_extent()
+        share = room.height / have.height if upright else room.width / have.width
+        longest = max(map(len, text.get_text().split("\n")), default=0)
+        if share >= 1.0 or longest < 8:
+            return
+        text.set_text(textwrap.fill(words, max(int(0.97 * share * longest), 6)))
 
 
 def save(figure: Figure, path: Path) -> None:

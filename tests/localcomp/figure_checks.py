@@ -49,7 +49,8 @@ def overlapping(figure: Figure) -> list[tuple[str, str]]:
     boxes: list[tuple[str, Bbox]] = []
     if figure.get_suptitle():
         boxes.append(("heading", figure._suptitle.get_window_extent(renderer)))  # type: ignore[attr-defined]
-    boxes += [(a.get_title(), a.title.get_window_extent(renderer)) for a in figure.axes if a.get_title()]
+    titles = [title for a in figure.axes for title in (a.title, a._left_title, a._right_title)]  # type: ignore[attr-defined]
+    boxes += [(title.get_text(), title.get_window_extent(renderer)) for title in titles if title.get_text()]
     boxes += [("legend", legend.get_window_extent(renderer)) for legend in figure.legends]
     found = []
     for n, (name, box) in enumerate(boxes):

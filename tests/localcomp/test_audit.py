@@ -15,6 +15,7 @@ import pytest
 from localcomp.audit import Audit, Outcome, decide, multiplicity, run_audit
 from localcomp.auditplan import plan_audit, read_findings, solve_plan, study_of_state
 from localcomp.auditsettings import AuditSettings, companions_of
+from localcomp.audittables import neighbors_csv
 from localcomp.claims import CLAIMS, from_middle
 from localcomp.errors import BadInput
 from localcomp.evidence import Findings, log_ratio
@@ -251,6 +252,56 @@ def test_ranges_are_measured_from_their_middle() -> None:
     found = from_middle(values, np.array([0, 0, 0, 1, 2]))
     assert found[:2, 0].tolist() == [-1.0, 1.0]
     assert np.isnan(found[2:, 0]).all()
+
+
+def test_a_state_without_solution_fails_no_claim(small: tuple[Audit, dict[str, Findings], Study]) -> None:
+    """Wells may take a state's solution away and leave the one without wells: its error is then not known."""
+    _, findings, study = small
+    full = findings["rhnc"]
+    main = {name: getattr(full.main, name).copy() for name in ("counts", "well_counts", "error")}
+    for values in main.values():
+        values[0] = np.nan
+    short = replace(full, main=replace(full.main, **main))
+    claim = Claim.ATHERMAL_LIMIT
+
+    def outcomes(found: Findings) -> list[Outcome]:
+        return [v.outcome for v in run_audit(found, study.audit).verdicts if v.test.claim is claim]
+
+    assert outcomes(short) == outcomes(full)
+    assert set(outcomes(full)) > {Outcome.FAILS}
+    nothing = replace(full.main, **{name: np.full_like(values, np.nan) for name, values in main.items()})
+    assert set(outcomes(replace(full, main=nothing))) == {Outcome.UNDECIDED}
+    reasons = {v.reason for v in run_audit(replace(full, main=nothing, ternary=None), study.audit).verdicts}
+    assert "not tested: no state has a solution" in reasons
+    assert not any("energies this large" in reason for reason in reasons)
+
+
+MIXTURES = """\
+[[mixtures]]
+names = ["argon", "krypton"]
+diameter = [1.0, 1.1]
+well_depth = [1.0, 1.4]
+[[mixtures]]
+names = ["methane", "xenon"]
+diameter = [1.0, 1.3]
+well_depth = [1.0, 1.4]
+[conditions]
+temperature = [2.0]
+packing_fraction = [0.35]
+mole_fractions = [[0.5, 0.5]]
+[numerics]
+accuracy = 1e-4
+"""
+
+
+def test_every_mixture_keeps_its_own_names(write: Callable[..., Path], tmp_path: Path) -> None:
+    study = read_study(write(MIXTURES, "study.toml"))
+    audit, _ = audited(study, tmp_path)
+    for row in csv.DictReader(io.StringIO(neighbors_csv(audit, study))):
+        assert {row["center"], row["neighbor"]} <= set(row["mixture"].split(" + "))
+    worst = [v.worst_state for v in audit.verdicts if "neighbor" in v.worst_state]
+    assert worst
+    assert all({w["center"], w["neighbor"]} == set(w["mixture"].split(" + ")) for w in worst)
 
 
 def test_z_can_be_measured(small: tuple[Audit, dict[str, Findings], Study]) -> None:

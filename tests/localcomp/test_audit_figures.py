@@ -67,6 +67,25 @@ def test_the_check_sees_a_clipped_text_and_a_covered_heading() -> None:
     assert overlapping(figure)
 
 
+LONG = "Pairs counted from both ends, σ_2/σ_1 = 1.5, ε_2/ε_1 = 2, k = 0.1, l = 0.05, λ = 1.5"
+NAMES = ("1,1,1,2-tetrafluoroethane", "2,2,4-trimethylpentane (isooctane)")
+
+
+def test_long_headings_and_names_stay_clear_of_legends() -> None:
+    implied, found = reciprocity_curves(AUDIT, NUMBER)
+    for figure in (
+        slope_figure(slope_table(AUDIT), LONG),
+        reciprocity_figure(implied, found, LONG, NAMES, NAMES[0]),
+        multiplicity_lines(multiplicity_curves(AUDIT, NUMBER), LONG, NAMES[0]),
+    ):
+        assert clipped(figure) == []
+        titles = [a._left_title for a in figure.axes]  # type: ignore[attr-defined]
+        figure.draw_without_rendering()
+        legend = figure.legends[0].get_window_extent()
+        assert titles[0].get_text().replace("\n", " ") == LONG
+        assert not any(title.get_window_extent().overlaps(legend) for title in titles if title.get_text())
+
+
 @each
 def test_axes_are_named_with_their_units(name: str) -> None:
     figure = FIGURES[name]
