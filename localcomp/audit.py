@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from localcomp.auditsettings import AuditSettings
 from localcomp.claims import CLAIMS, ClaimTest, Items
 from localcomp.evidence import Array, Findings, Table, planted
-from localcomp.models import ActivityModel, Claim, Reading
+from localcomp.models import LATTICE_COORDINATION, ActivityModel, Claim, Reading
 
 STRAINED = 3.0
 """In tolerances: up to here a claim is strained, beyond it fails."""
@@ -142,6 +142,8 @@ def run_audit(
     others = companions or {}
     z_measured = mean_coordination(findings.main)
     z = settings.z if settings.z is not None else z_measured
+    if not np.isfinite(z):  # nothing was solved, so nothing will be judged
+        z = LATTICE_COORDINATION
     measured = {test.claim: test.measure(findings) for test in CLAIMS}
     spread = {test.claim: _closure_spread(test, measured[test.claim], list(others.values())) for test in CLAIMS}
     verdicts = []

@@ -243,7 +243,7 @@ def _findings(plan: AuditPlan, closure: str, known: Results) -> Findings:
     return Findings(
         _table(main, counts(main, study.rule), known, study),
         counts([_athermal(case) for case in main], study.rule),
-        {name: table for name, table in rules.items() if np.isfinite(table).any()},
+        rules,  # the same under every closure, answered or not: closures are compared item by item
         many,
         binary,
     )

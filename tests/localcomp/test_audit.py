@@ -276,6 +276,31 @@ def test_a_state_without_solution_fails_no_claim(small: tuple[Audit, dict[str, F
     assert not any("energies this large" in reason for reason in reasons)
 
 
+def test_a_class_without_any_solution_is_reported(
+    run: Callable[..., object], write: Callable[..., Path], tmp_path: Path
+) -> None:
+    text = study_text(sizes="[1.0]", energies="[1.0]", k="[0.6]", temperatures="[0.02]", packing="[0.4]")
+    path = write(text.replace("[0.0, 0.3, 1.0]", "[0.5]") + '[audit]\nz = "measured"\n', "study.toml")
+    ran = run("audit", path, "--out", tmp_path / "out", "--json", "--workers", 1)
+    body = json.loads(ran.out)  # type: ignore[attr-defined]
+    assert (body["states"], body["failed_states"]) == (1, 1)
+    assert {v["verdict"] for v in body["verdicts"]} == {"undecided"}
+
+
+def test_closures_need_not_answer_the_same_shell_rules(
+    small: tuple[Audit, dict[str, Findings], Study], tmp_path: Path
+) -> None:
+    """A rule without an answer under one closure, as the first minimum of a repulsive mixture may be."""
+    _, findings, study = small
+    with Store(tmp_path / "empty.sqlite") as store:
+        unanswered = read_findings(plan_audit(study, study.audit), store)["hnc"]
+    other = replace(findings["hnc"], rules=unanswered.rules)
+    for judged, companion in ((findings["rhnc"], other), (other, findings["rhnc"])):
+        verdicts = run_audit(judged, study.audit, "", {"hnc": companion}).verdicts
+        outcomes = {v.outcome for v in verdicts if v.test.claim is Claim.SHELL_RULE}
+        assert (outcomes == {Outcome.UNDECIDED}) is (judged is other)
+
+
 MIXTURES = """\
 [[mixtures]]
 names = ["argon", "krypton"]
