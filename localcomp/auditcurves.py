@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Sequence
 
 import numpy as np
@@ -221,7 +222,7 @@ def _claimed_slope(model: ActivityModel, reading: Reading, z: float) -> float | 
 
 
 def multiplicity_panels(audit: Audit) -> list[MultiplicityMap]:
-    """m_12 and m_21 over size and energy ratio, averaged over k, at the middle of the other axes; empty for a pair."""
+    """m_12 and m_21 over size and energy ratio at the extremes of k, the middle of the other axes; empty for a pair."""
     table = audit.findings.main
     if any("size_ratio" not in label or "energy_ratio" not in label for label in table.labels):
         return []
@@ -234,7 +235,8 @@ def multiplicity_panels(audit: Audit) -> list[MultiplicityMap]:
     reduced = np.array([float(label["reduced_temperature"]) for label in table.labels])
     x1 = table.mole_fractions[:, 0]
     here = np.ones(len(size), bool)
-    for column in (reduced, table.packing, x1):
+    other = [np.array([float(label[name]) for label in table.labels]) for name in ("l", "well_range")]
+    for column in (reduced, table.packing, x1, *other):
         here &= np.isclose(column, _middle(column))
     exponent = multiplicity(audit.findings)
     out = []
@@ -259,19 +261,38 @@ def map_conditions(audit: Audit) -> str:
     return f"T* = {_middle(reduced):.3g}, η = {_middle(table.packing):.3g}, x_1 = {x1:.2g}"
 
 
-def multiplicity_curves(audit: Audit, number: int) -> list[Curve]:
-    """m_12 and m_21 of one mixture against composition, per temperature."""
+def shown_conditions(audit: Audit, number: int, *, with_temperature: bool = False) -> str:
+    """Where line figures of one mixture are cut, and the closure."""
     table = audit.findings.main
     own = (table.mixture == number) & table.solved
     packing = _middle(table.packing[own])
-    exponent = multiplicity(audit.findings)
+    text = f"η = {packing:.3g}"
+    if with_temperature:
+        temperature = _middle(table.temperature[own & np.isclose(table.packing, packing)])
+        text += f", T = {temperature:.4g}{audit.temperature_unit}"
+    return text + (f", {audit.closure}" if audit.closure else "")
+
+
+def left_out(audit: Audit) -> list[str]:
+    """Models that were judged but are not drawn in line figures."""
+    drawn = line_models(audit)
+    return list(dict.fromkeys(m.label for m, r in audit.rows() if (m, r) not in drawn))
+
+
+def multiplicity_curves(audit: Audit, number: int) -> list[Curve]:
+    """m_12 and m_21 of one mixture against composition, at its extreme temperatures and packing fractions."""
+    table = audit.findings.main
+    own = (table.mixture == number) & table.solved
     names = species_of(audit, number)
+    exponent = multiplicity(audit.findings)
+    extremes = [sorted({float(v[own].min()), float(v[own].max())}) for v in (table.temperature, table.packing)]
     out = []
-    for temperature in _levels(table.temperature[own]):
+    for temperature, packing in itertools.product(*extremes):
         rows = _isotherm(audit, number, temperature, packing)
         for i, j in ((0, 1), (1, 0)):
             if np.isfinite(exponent[rows, i, j]).any():
-                label = f"{names[j]} around {names[i]}, T = {temperature:.4g}{audit.temperature_unit}"
+                at = f"T = {temperature:.4g}{audit.temperature_unit}, η = {packing:.3g}"
+                label = f"{names[j]} around {names[i]}, {at}"
                 out.append(Curve(label, table.mole_fractions[rows, 0], exponent[rows, i, j]))
     return out
 

@@ -135,25 +135,27 @@ def _ternaries(study: Study, main: Sequence[Case]) -> tuple[Case, ...]:
     corners = [c for c in dict.fromkeys(corners) if c in species and c != (1.0, 1.0)]
     if len(corners) == 1 and len(species) > 1:
         corners.append(next(s for s in species if s not in corners))
-    labels = max((c.labels for c in main), key=lambda label: abs(float(label["k"])))
-    packing = float(np.median([c.mixture.packing_fraction(c.state) for c in main]))
+    reduced = [float(c.labels["reduced_temperature"]) for c in main]
+    axes = {name: sorted({float(c.labels[name]) for c in main}) for name in ("k", "l", "well_range")}
+    packing = _extremes([c.mixture.packing_fraction(c.state) for c in main])
     out = []
-    for one, other in itertools.combinations(corners, 2):
-        mixture = Mixture(
-            [1.0, one[0], other[0]], [1.0, one[1], other[1]], float(labels["well_range"]), k=float(labels["k"]),
-            l=float(labels["l"]),
-        )  # fmt: skip
-        for reduced in _extremes([float(c.labels["reduced_temperature"]) for c in main]):
+    for (one, other), k, l_, reach in itertools.product(
+        itertools.combinations(corners, 2), _extremes(axes["k"]), _extremes(axes["l"]), _extremes(axes["well_range"])
+    ):
+        mixture = Mixture([1.0, one[0], other[0]], [1.0, one[1], other[1]], reach, k=k, l=l_)
+        names: dict[str, float | str] = {
+            "second species": f"{one[0]:g}, {one[1]:g}", "third species": f"{other[0]:g}, {other[1]:g}",
+            "k": k, "l": l_, "well_range": reach,
+        }  # fmt: skip
+        for level, eta in itertools.product(_extremes(reduced), packing):
             # the warmest of the pairs' temperatures: all three are liquids there
             temperature = max(
                 c.state.temperature for c in main
-                if c.labels["reduced_temperature"] == reduced
+                if c.labels["reduced_temperature"] == level
                 and (c.labels["size_ratio"], c.labels["energy_ratio"]) in (one, other)
             )  # fmt: skip
             for x in TERNARY_COMPOSITIONS:
-                state = State(temperature, x, packing_fraction=packing)
-                names = {"second species": f"{one[0]:g}, {one[1]:g}", "third species": f"{other[0]:g}, {other[1]:g}"}
-                out.append(Case(mixture, state, main[0].closure, {**names, "k": labels["k"]}))
+                out.append(Case(mixture, State(temperature, x, packing_fraction=eta), main[0].closure, dict(names)))
     return tuple(out)
 
 
@@ -183,7 +185,8 @@ def study_of_state(request: StateFile) -> Study:
     kind = "pair" if size == 2 else "mixtures"
     text = request.path.read_text(encoding="utf-8-sig")
     return Study(
-        request.path, name, kind, request.units, request.rule, request.accuracy, (request.closure,), tuple(cases), text
+        request.path, name, kind, request.units, request.rule, request.accuracy, (request.closure,), tuple(cases), text,
+        request.audit,
     )  # fmt: skip
 
 

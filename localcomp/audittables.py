@@ -30,7 +30,7 @@ def claims_csv(audit: Audit) -> str:
     for v in audit.verdicts:
         low, high, rms = v.spread
         numbers = [v.measured, v.claimed, v.deviation, v.uncertainty]
-        contacts = float(v.reading.contacts(audit.z))
+        contacts = float(v.reading.contacts(audit.z)) if len(v.model.readings) > 1 else float("nan")
         writer.writerow(
             [v.model.label, reading_text(v.model, v.reading), _number(contacts), v.test.claim.value,
              v.test.sentence, v.test.quantity, v.outcome.value, *map(_number, numbers), _number(v.tolerance),
@@ -110,7 +110,19 @@ def verdict_body(v: Verdict) -> dict[str, Any]:
     }
 
 
-def verdicts_json(audit: Audit, ranked: list[Standing]) -> dict[str, Any]:
+def _ternaries(audit: Audit) -> list[dict[str, Any]]:
+    """Mixtures of three and more that claim 8 was tested on, with their conditions, each once."""
+    table = audit.findings.ternary
+    if table is None:
+        return []
+    found = {}
+    for n, labels in enumerate(table.labels):
+        entry = {**labels, "temperature": float(table.temperature[n]), "packing_fraction": float(table.packing[n])}
+        found[state_text(entry)] = entry
+    return list(found.values())
+
+
+def verdicts_json(audit: Audit, ranked: list[Standing], study: Study) -> dict[str, Any]:
     """The whole audit as plain values."""
     body = {
         "verdicts": [verdict_body(v) for v in audit.verdicts],
@@ -120,6 +132,9 @@ def verdicts_json(audit: Audit, ranked: list[Standing]) -> dict[str, Any]:
         "uncertainty_from_closures": list(audit.companions),
         "z": audit.z,
         "z_measured": audit.z_measured,
+        "shell_rule": study.rule.description,
+        "accuracy": study.accuracy,
+        "ternaries": _ternaries(audit),
         "tolerances": {
             test.key: {"value": audit.settings.tolerance(test.key), "default": test.tolerance, "why": test.why}
             for test in CLAIMS

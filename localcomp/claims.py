@@ -132,6 +132,9 @@ def boltzmann(findings: Findings) -> Items:
     """ln R_ij - ln R_ij(athermal)."""
     table = findings.main
     change = table.ln_ratio - log_ratio(findings.athermal)
+    change = np.where(
+        np.any(table.depth != 0.0, axis=(1, 2), keepdims=True), change, np.nan
+    )  # hard spheres test nothing
     return _items(change, 2.0 * table.ln_error, _unlike(change.shape[-1]))
 
 
@@ -226,7 +229,7 @@ CLAIMS: tuple[ClaimTest, ...] = (
     ),
     ClaimTest(
         Claim.BOLTZMANN, "boltzmann", "Boltzmann", "attraction changes ln R by m beta (eps_ij - eps_ii)",
-        "ln R - ln R(athermal)", 0.05, RATIO_REASON, "no state has an athermal counterpart", boltzmann,
+        "ln R - ln R(athermal)", 0.05, RATIO_REASON, "no state with attraction has a solution", boltzmann,
     ),
     ClaimTest(
         Claim.ATHERMAL_LIMIT, "athermal", "athermal", "without attraction R is set by mole, surface or volume",
@@ -254,14 +257,15 @@ CLAIMS: tuple[ClaimTest, ...] = (
     ),
     ClaimTest(
         Claim.TERNARY, "ternary", "ternary", "ratios in a ternary are those of its binaries",
-        "ln R(ternary) - ln R(binary)", 0.05, RATIO_REASON, "the study has one pair only: no ternary can be made of it",
+        "ln R(ternary) - ln R(binary)", 0.05, RATIO_REASON,
+        "the study has one pair, or pairs without a class: no mixture of three species is made of them",
         ternary, on_ternaries=True,
     ),
     ClaimTest(
         Claim.ENERGY, "energy", "energy", "the energy of the stated neighbours is the energy",
         "energy per contact over sum x_i x_j |eps_ij|", 0.01,
         "excess energies of simple liquids are a few per cent of the energy: 1 % is a quarter or so of them",
-        "no state has attraction", energy,
+        "no mixed state with attraction has a solution", energy,
     ),
     ClaimTest(
         Claim.SHELL_RULE, "shell_rule", "shell rule", "the answer does not hinge on the shell rule",

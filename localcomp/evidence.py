@@ -82,13 +82,14 @@ class Table:
         return np.asarray(np.isfinite(self.counts).all(axis=(1, 2)))
 
     def given(self, z: float) -> ModelInput:
-        """What a model is told about these states."""
+        """What a model is told about these states; one segment for the whole table, its smallest sphere."""
         return ModelInput(
             self.depth / self.temperature[:, None, None],
             np.diagonal(self.diameter, axis1=1, axis2=2),
             self.mole_fractions,
             self.diameter,
             np.full(len(self.temperature), z),
+            float(self.diameter.min()) if self.diameter.size else None,
         )
 
     def groups(self, *columns: Array) -> Index:
@@ -208,6 +209,7 @@ def pair_inputs(given: ModelInput) -> list[tuple[int, int, ModelInput]]:
                         x / x.sum(axis=-1, keepdims=True),
                         None if given.pair_diameter is None else given.pair_diameter[..., both, :][..., both],
                         given.z,
+                        given.segment,
                     ),
                 )
             )

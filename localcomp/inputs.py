@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import math
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
+from localcomp.auditsettings import AuditSettings, read_audit
 from localcomp.errors import BadInput, Problem
 from localcomp.shells import RULES, FixedMultiple, ShellRule, make_rule
 from localcomp.tables import Table, as_number, load_toml
@@ -39,6 +40,8 @@ class StateFile:
     accuracy : float
         Relative, on coordination numbers.
     rule : ShellRule
+    audit : AuditSettings
+        How `localcomp audit` judges the class around the state.
     """
 
     path: Path
@@ -48,6 +51,7 @@ class StateFile:
     closure: str
     accuracy: float
     rule: ShellRule
+    audit: AuditSettings = field(default_factory=AuditSettings)
 
 
 def not_this_kind(top: Table, signs: dict[str, str]) -> None:
@@ -81,13 +85,14 @@ def read_state(path: str | Path) -> StateFile:
     problems: list[Problem] = []
     top = Table(str(path), "", content, problems)
     not_this_kind(top, {"fluid": "a pure-liquid file: localcomp calibrate", "conditions": "a study: localcomp sweep"})
-    top.known(("mixture", "state", "units", "shell", "numerics"))
+    top.known(("mixture", "state", "units", "shell", "numerics", "audit"))
     for needed in ("mixture", "state"):
         if needed not in content:
             top.missing(f"[{needed}]", f"a [{needed}] table is needed")
     units = read_units(Table(str(path), "units", content.get("units", {}), problems))
     rule = read_shell(Table(str(path), "shell", content.get("shell", {}), problems))
     accuracy = read_accuracy(Table(str(path), "numerics", content.get("numerics", {}), problems))
+    audit = read_audit(Table(str(path), "audit", content.get("audit", {}), problems))
     mixture = read_mixture(Table(str(path), "mixture", content["mixture"], problems)) if "mixture" in content else None
     result = None
     if "state" in content:
@@ -96,7 +101,7 @@ def read_state(path: str | Path) -> StateFile:
     if problems or mixture is None or result is None:
         raise BadInput(problems)
     state, closure = result
-    return StateFile(path, units, mixture, state, closure, accuracy, rule)
+    return StateFile(path, units, mixture, state, closure, accuracy, rule, audit)
 
 
 def read_units(table: Table) -> Units:

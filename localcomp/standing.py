@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from localcomp.audit import Audit, Outcome, Verdict, decide, main_rows
 from localcomp.evidence import Array, Table
-from localcomp.models import ActivityModel, Reading
+from localcomp.models import ActivityModel, Claim, Reading
 
 AXES = {
     "size_ratio": "size ratio",
@@ -55,9 +55,9 @@ class Standing:
     counts : dict
         Claims by outcome.
     survives : bool
-        Nothing tested fails or is strained, and something holds.
+        All that was tested holds.
     costliest : Verdict or None
-        The claim furthest from holding, in tolerances.
+        The claim furthest from holding, in tolerances; the shell rule's is the same for all models and left out.
     split : Split or None
     """
 
@@ -75,21 +75,22 @@ class Standing:
 
 
 def standings(audit: Audit) -> list[Standing]:
-    """One per model and reading: fewest failures first, then fewest strains, then smallest worst difference."""
+    """One per model and reading: fewest failures first, then fewest claims that do not hold, then smallest cost."""
     out = [_standing(audit, model, reading) for model, reading in audit.rows()]
-    return sorted(out, key=lambda s: (s.counts[Outcome.FAILS], s.counts[Outcome.STRAINED], s.cost))
+    return sorted(out, key=lambda s: (s.counts[Outcome.FAILS], -s.counts[Outcome.HOLDS], s.cost))
 
 
 def _standing(audit: Audit, model: ActivityModel, reading: Reading) -> Standing:
     verdicts = audit.of(model, reading)
     counts = {outcome: sum(v.outcome is outcome for v in verdicts) for outcome in Outcome}
     tested = [v for v in verdicts if np.isfinite(v.deviation)]
-    costliest = max(tested, key=lambda v: v.deviation / v.tolerance, default=None)
+    own = [v for v in tested if v.test.claim is not Claim.SHELL_RULE]
+    costliest = max(own, key=lambda v: v.deviation / v.tolerance, default=None)
     if costliest is not None and costliest.outcome is Outcome.HOLDS:
         costliest = None
-    bad = counts[Outcome.FAILS] + counts[Outcome.STRAINED]
-    split = _best_split(audit.findings.main, tested, audit.temperature_unit) if bad else None
-    return Standing(model, reading, counts, bad == 0 and counts[Outcome.HOLDS] > 0, costliest, split)
+    bad = sum(v.outcome is not Outcome.HOLDS for v in tested)
+    split = _best_split(audit.findings.main, tested) if bad else None
+    return Standing(model, reading, counts, bad == 0 and bool(tested), costliest, split)
 
 
 def axis_values(table: Table) -> dict[str, Array]:
@@ -155,6 +156,8 @@ def sentences(audit: Audit, ranked: list[Standing]) -> list[str]:
         out.append(f"Every tested statement survives for: {names}.")
     else:
         out.append("No model's statements all survive over this class.")
+    if any(v.test.claim is Claim.SHELL_RULE and v.outcome is not Outcome.HOLDS for v in audit.verdicts):
+        out.append("Whatever the model, the ratios hinge on the shell rule (claim 10).")
     for s in ranked:
         if s.costliest is not None:
             text = f"{title(s.model, s.reading)}: {cost_text(s)}"

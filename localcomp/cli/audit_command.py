@@ -37,6 +37,7 @@ def audit(
     from localcomp.cli.audit_tables import print_audit
     from localcomp.cli.outputs import print_json
     from localcomp.cli.study_command import Bar
+    from localcomp.errors import NoAnswer
     from localcomp.executors import SerialExecutor, pool
     from localcomp.standing import standings
     from localcomp.store import Store
@@ -63,11 +64,13 @@ def audit(
             typer.echo("interrupted; what was solved is stored, the same command goes on from there", err=True)
             raise typer.Exit(INTERRUPTED) from None
     judged = findings[plan.closures[0]]
+    if not judged.main.solved.any():
+        raise NoAnswer(f"none of the {len(plan.main)} states has a physical solution under {plan.closures[0]}")
     names = plan.main[0].mixture.names if plan.main else ()
     result = run_audit(judged, settings, plan.closures[0], {c: findings[c] for c in plan.closures[1:]}, names)
     result = replace(result, temperature_unit=" K" if found.units.real else "")
     ranked = standings(result)
-    body = verdicts_json(result, ranked)
+    body = verdicts_json(result, ranked, found)
     written = _write(out, result, found, [findings[c].main.ln_ratio for c in plan.closures[1:]], body)
     if json:
         print_json(body)
@@ -113,21 +116,25 @@ def _write(out: Path, result: Audit, study: Study, others: list, body: dict) -> 
             number = curves.shown_mixture(result)
             mixture = curves.describe_mixture(result, number)
             first, second = curves.species_of(result, number)
+            cut = curves.shown_conditions(result, number)
+            both = curves.shown_conditions(result, number, with_temperature=True)
             panels = curves.ratio_panels(result, number, curves.ln_ratio_uncertainty(result, others))
-            figures["ratios"] = ratio_figure(panels, f"Neighbour ratios, {mixture}", first)
+            figures["ratios"] = ratio_figure(
+                panels, f"Neighbour ratios, {mixture}, {cut}", first, curves.left_out(result)
+            )
             implied, real = curves.reciprocity_curves(result, number)
             figures["reciprocity"] = reciprocity_figure(
-                implied, real, f"Pairs counted from both ends, {mixture}", (first, second), first
+                implied, real, f"Pairs counted from both ends,\n{mixture}, {both}", (first, second), first
             )
             maps = curves.multiplicity_panels(result)
             if maps:
                 figures["multiplicity"] = multiplicity_maps(
                     maps, f"Measured multiplicity of β(ε_ij − ε_ii), {curves.map_conditions(result)}"
                 )
-            else:
-                lines = curves.multiplicity_curves(result, number)
-                if lines:
-                    figures["multiplicity"] = multiplicity_lines(lines, f"Measured multiplicity, {mixture}", first)
+            lines = curves.multiplicity_curves(result, number)
+            if lines:
+                name = "multiplicity_conditions" if maps else "multiplicity"
+                figures[name] = multiplicity_lines(lines, f"Measured multiplicity,\n{mixture}", first)
     for name, figure in figures.items():
         for suffix in (".png", ".svg"):
             save(figure, out / f"{name}{suffix}")

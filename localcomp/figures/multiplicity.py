@@ -70,7 +70,7 @@ def multiplicity_maps(maps: Sequence[MultiplicityMap], heading: str) -> Figure:
             axis.set_ylabel("energy ratio ε_2/ε_1")
             axis.set_title(part.title)
         if image is not None:
-            figure.colorbar(image, ax=list(axes), label="multiplicity m (1: one contact's energy)", shrink=0.95)
+            figure.colorbar(image, ax=list(axes), label="multiplicity m", shrink=0.95)
         figure.suptitle(f"{heading}\ngrey: the energies do not differ, or no solution", fontsize=10)
     return figure
 

@@ -54,8 +54,11 @@ class RatioPanel:
     stated: Sequence[Curve]
 
 
-def ratio_figure(panels: Sequence[Sequence[RatioPanel]], heading: str, species: str) -> Figure:
-    """Rows: pair directions; columns: temperatures. R on a logarithmic scale."""
+def ratio_figure(
+    panels: Sequence[Sequence[RatioPanel]], heading: str, species: str, missing: Sequence[str] = ()
+) -> Figure:
+    """Rows: pair directions; columns: temperatures. R on a logarithmic scale; `missing` names models not drawn."""
+    note = "lines not seen lie outside the panels" + (f"; not drawn: {', '.join(missing)}" if missing else "")
     rows, columns = len(panels), len(panels[0])
     labels = [curve.label for curve in panels[0][0].stated]
     with look():
@@ -80,7 +83,7 @@ def ratio_figure(panels: Sequence[Sequence[RatioPanel]], heading: str, species: 
             loc="outside lower center",
             ncols=2,
             handlelength=3.2,
-            title="lines not seen lie outside the panels",
+            title=note,
             title_fontsize=8.0,
         )
         figure.suptitle(heading, fontsize=10)

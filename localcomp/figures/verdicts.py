@@ -66,7 +66,8 @@ def verdict_figure(grid: VerdictGrid, heading: str) -> Figure:
         handles.append(Line2D([], [], ls="", marker="_", ms=8, color=GRID, label="not claimed"))
         figure.legend(
             handles=handles, loc="outside lower center", ncols=len(handles),
-            title="number: worst difference in tolerances (holds up to 1, strained up to 3)", title_fontsize=8.0,
+            title="number: worst difference in tolerances (holds up to 1, strained up to 3)\n"
+            "spheres with square wells; verify against measured phase equilibria", title_fontsize=8.0,
         )  # fmt: skip
         figure.suptitle(heading, fontsize=10)
     return figure

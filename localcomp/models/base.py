@@ -92,6 +92,8 @@ class ModelInput:
         sigma_ij; arithmetic means unless given.
     z : float or ndarray, shape (...)
         Lattice coordination number.
+    segment : float, optional
+        Diameter of the segment that r and q are counted in; the smallest sphere unless given.
     """
 
     reduced_depth: Array
@@ -99,6 +101,7 @@ class ModelInput:
     mole_fractions: Array
     pair_diameter: Array | None = None
     z: Array | float = LATTICE_COORDINATION
+    segment: float | None = None
 
     @classmethod
     def of(cls, mixture: Mixture, state: State, z: float = LATTICE_COORDINATION) -> ModelInput:
@@ -125,21 +128,26 @@ class ModelInput:
 
     @property
     def surface(self) -> Array:
-        """q_i = (sigma_i/sigma_smallest)^2: the smallest sphere is the segment."""
-        return np.asarray((self.diameter / self.diameter.min(axis=-1, keepdims=True)) ** 2)
+        """q_i = (sigma_i/sigma_segment)^2."""
+        return np.asarray((self.diameter / self._unit[..., None]) ** 2)
 
     @property
     def volume(self) -> Array:
-        """r_i = (sigma_i/sigma_smallest)^3."""
-        return np.asarray((self.diameter / self.diameter.min(axis=-1, keepdims=True)) ** 3)
+        """r_i = (sigma_i/sigma_segment)^3."""
+        return np.asarray((self.diameter / self._unit[..., None]) ** 3)
+
+    @property
+    def _unit(self) -> Array:
+        smallest = self.diameter.min(axis=-1)
+        return np.asarray(smallest if self.segment is None else np.full_like(smallest, self.segment))
 
     @property
     def pair_volume(self) -> Array:
-        """(sigma_ij/sigma_smallest)^3, shape (..., s, s)."""
+        """(sigma_ij/sigma_segment)^3, shape (..., s, s)."""
         pair = self.pair_diameter
         if pair is None:
             pair = 0.5 * (self.diameter[..., :, None] + self.diameter[..., None, :])
-        return np.asarray((pair / self.diameter.min(axis=-1)[..., None, None]) ** 3)
+        return np.asarray((pair / self._unit[..., None, None]) ** 3)
 
     def contacts(self, reading: Reading) -> Array:
         """m, with two axes of length one behind the batch axes."""
@@ -147,9 +155,7 @@ class ModelInput:
 
     def athermal(self) -> ModelInput:
         """The same mixture without wells."""
-        return ModelInput(
-            np.zeros_like(self.reduced_depth), self.diameter, self.mole_fractions, self.pair_diameter, self.z
-        )
+        return replace(self, reduced_depth=np.zeros_like(self.reduced_depth))
 
 
 class ActivityModel(Protocol):

@@ -46,6 +46,9 @@ accuracy = 1e-4
 """
 
 
+PAIR = "[pair]\nnames = ['a', 'b']\ndiameter = [1.0, 1.3]\nwell_depth = [0.0, 0.0]"
+
+
 def study_text(
     sizes: str = "[1.0, 1.4]", energies: str = "[1.0, 1.6]", k: str = "[0.05]", temperatures: str = "[2.0, 3.0]",
     packing: str = "[0.35, 0.4]",
@@ -282,9 +285,49 @@ def test_a_class_without_any_solution_is_reported(
     text = study_text(sizes="[1.0]", energies="[1.0]", k="[0.6]", temperatures="[0.02]", packing="[0.4]")
     path = write(text.replace("[0.0, 0.3, 1.0]", "[0.5]") + '[audit]\nz = "measured"\n', "study.toml")
     ran = run("audit", path, "--out", tmp_path / "out", "--json", "--workers", 1)
-    body = json.loads(ran.out)  # type: ignore[attr-defined]
-    assert (body["states"], body["failed_states"]) == (1, 1)
-    assert {v["verdict"] for v in body["verdicts"]} == {"undecided"}
+    assert ran.status == 3  # type: ignore[attr-defined]
+    assert "none of the 1 states has a physical solution under rhnc" in ran.err  # type: ignore[attr-defined]
+
+
+def test_hard_spheres_test_no_claim_about_attraction(tmp_path: Path) -> None:
+    path = tmp_path / "hard.toml"
+    path.write_text(study_text(energies="[1.0]").replace("[class]", PAIR) + "", encoding="utf-8")
+    text = path.read_text(encoding="utf-8")
+    keep = [line for line in text.splitlines() if not line.startswith(("size_ratio", "energy_ratio", "k ="))]
+    path.write_text("\n".join(keep), encoding="utf-8")
+    audit, _ = audited(read_study(path), tmp_path)
+    reasons = {v.test.claim: v.reason for v in audit.verdicts if v.reason.startswith("not tested")}
+    assert {Claim.BOLTZMANN, Claim.ENERGY} <= set(reasons)
+
+
+def test_an_undecided_claim_is_no_survival(small: tuple[Audit, dict[str, Findings], Study]) -> None:
+    audit, _, _ = small
+    only = tuple(
+        replace(v, outcome=Outcome.UNDECIDED if v.test.claim is Claim.BOLTZMANN else Outcome.HOLDS)
+        for v in audit.verdicts
+    )
+    assert not any(s.survives for s in standings(replace(audit, verdicts=only)))
+    held = tuple(replace(v, outcome=Outcome.HOLDS) for v in audit.verdicts)
+    assert all(s.survives for s in standings(replace(audit, verdicts=held)))
+
+
+def test_one_segment_for_a_class(tmp_path: Path) -> None:
+    """The same sphere has the same surface whatever it is mixed with."""
+    path = tmp_path / "sizes.toml"
+    path.write_text(study_text(sizes="[0.8, 1.25]", energies="[1.0]"), encoding="utf-8")
+    _, findings = audited(read_study(path), tmp_path)
+    table = findings["rhnc"].main
+    given = table.given(10.0)
+    first = given.surface[:, 0]
+    assert np.ptp(first) < 1e-12
+    assert first[0] == pytest.approx((1.0 / 0.8) ** 2)
+
+
+def test_a_state_file_may_say_how_it_is_judged(write: Callable[..., Path]) -> None:
+    request = read_state(write(STATE + "[audit]\nz = 12\n[audit.tolerances]\nproduct = 0.2\n"))
+    settings = study_of_state(request).audit
+    assert settings.z == 12.0
+    assert settings.tolerance("product") == 0.2
 
 
 def test_closures_need_not_answer_the_same_shell_rules(
