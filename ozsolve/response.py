@@ -15,12 +15,17 @@ import numpy as np
 from ozsolve.closures import PY
 from ozsolve.equations import Equations, Fluid
 from ozsolve.newton import solve_linear
+from ozsolve.oz import pair_index
 from ozsolve.potential import Array
 from ozsolve.root import bridge_function
 from ozsolve.thermodynamics import Observables, observe
 
 STEP = 1e-4
 LINEAR_TOLERANCE = 1e-8
+CENTRAL = ((-1.0, -0.5), (1.0, 0.5))
+"""(offset in steps, weight over the step) of the central difference, second order."""
+FORWARD = ((0.0, -1.5), (1.0, 2.0), (2.0, -0.5))
+"""The same for a parameter that cannot be decreased: a density of zero."""
 
 
 class Response:
@@ -34,41 +39,50 @@ class Response:
         r gamma of the state and of its Percus-Yevick hard-sphere reference.
     fluid_at : callable
         t -> the reduced fluid displaced by t along the direction; `fluid_at(0)` is the solved one.
+    stencil : CENTRAL or FORWARD
+        Offsets and weights of the explicit differences.
     """
 
-    def __init__(self, equations: Equations, x: Array, reference: Array, fluid_at: Callable[[float], Fluid]) -> None:
+    def __init__(
+        self,
+        equations: Equations,
+        x: Array,
+        reference: Array,
+        fluid_at: Callable[[float], Fluid],
+        stencil: tuple[tuple[float, float], ...] = CENTRAL,
+    ) -> None:
         grid, closure = equations.grid, equations.closure
-        forward, backward = fluid_at(STEP), fluid_at(-STEP)
-        bridges: tuple[Array | None, Array | None] = (None, None)
+        self._offsets = [STEP * offset for offset, _ in stencil]
+        self._weights = [weight / STEP for _, weight in stencil]
+        fluids = [fluid_at(offset) for offset in self._offsets]
+        bridges: list[Array | None] = [None] * len(fluids)
         if closure.needs_reference:
             hard = Equations(equations.fluid.scaled(attraction=0.0), grid, PY)
-            sides = [Equations(f.scaled(attraction=0.0), grid, PY) for f in (forward, backward)]
-            moved = solve_linear(hard, reference, self._map_slope(sides[0], sides[1], reference), LINEAR_TOLERANCE)
-            bridges = (
-                bridge_function(reference + STEP * moved, sides[0]),
-                bridge_function(reference - STEP * moved, sides[1]),
-            )
-        self._forward = Equations(forward, grid, closure, bridges[0])
-        self._backward = Equations(backward, grid, closure, bridges[1])
-        slope = self._map_slope(self._forward, self._backward, x)
+            sides = [Equations(f.scaled(attraction=0.0), grid, PY) for f in fluids]
+            moved = solve_linear(hard, reference, self._map_slope(sides, reference), LINEAR_TOLERANCE)
+            bridges = [
+                bridge_function(reference + offset * moved, side)
+                for offset, side in zip(self._offsets, sides, strict=True)
+            ]
+        self._sides = [Equations(f, grid, closure, b) for f, b in zip(fluids, bridges, strict=True)]
         self._x = x
-        self.dx: Array = solve_linear(equations, x, slope, LINEAR_TOLERANCE)
+        self.dx: Array = solve_linear(equations, x, self._map_slope(self._sides, x), LINEAR_TOLERANCE)
 
-    @staticmethod
-    def _map_slope(forward: Equations, backward: Equations, x: Array) -> Array:
-        return np.asarray((forward.apply(x)[0] - backward.apply(x)[0]) / (2.0 * STEP))
+    def _map_slope(self, sides: list[Equations], x: Array) -> Array:
+        images = (side.apply(x)[0] for side in sides)
+        return np.asarray(sum(weight * image for weight, image in zip(self._weights, images, strict=True)))
 
-    def ends(self) -> tuple[Observables, Observables]:
-        """Observables a small step forward and backward (`STEP`), to first order in the solution."""
-        return (
-            observe(self._forward, self._x + STEP * self.dx),
-            observe(self._backward, self._x - STEP * self.dx),
-        )
+    def ends(self) -> list[Observables]:
+        """Observables at the stencil's offsets (`CENTRAL`: backward, forward), to first order in the solution."""
+        return [
+            observe(side, self._x + offset * self.dx)
+            for offset, side in zip(self._offsets, self._sides, strict=True)
+        ]
 
-    def slope(self, name: str) -> Array | float:
-        """Derivative of the named field of `Observables`, per unit of t."""
-        forward, backward = self.ends()
-        return (getattr(forward, name) - getattr(backward, name)) / (2.0 * STEP)  # type: ignore[no-any-return]
+    def slope(self, number: Callable[[Observables, Fluid], float]) -> float:
+        """Derivative, per unit of t, of a number read off observables and the fluid they belong to."""
+        values = [number(end, side.fluid) for end, side in zip(self.ends(), self._sides, strict=True)]
+        return float(np.dot(self._weights, values))
 
 
 def density_derivatives(equations: Equations, x: Array, reference: Array) -> tuple[float, float]:
@@ -84,6 +98,40 @@ def density_derivatives(equations: Equations, x: Array, reference: Array) -> tup
     """
     fluid = equations.fluid
     response = Response(equations, x, reference, lambda t: fluid.scaled(density=1.0 + t))
-    forward, backward = response.ends()
+    backward, forward = response.ends()
     inverse = ((1.0 + STEP) * forward.virial - (1.0 - STEP) * backward.virial) / (2.0 * STEP)
     return float(inverse), float((forward.energy - backward.energy) / (2.0 * STEP))
+
+
+def partial_energies(equations: Equations, x: Array, reference: Array) -> Array:
+    """d(U/V)/d rho_j at constant temperature and volume, in kT: what one more particle of species j adds.
+
+    Its integral over beta is the attraction part of beta mu_j (thermodynamics: mu_j = dA/dN_j and
+    beta A = int U d beta). A species at zero density is added one-sidedly.
+
+    Returns
+    -------
+    ndarray, shape (s,)
+    """
+    fluid = equations.fluid
+    species = fluid.rho.shape[1]
+    like = [pair_index(species)[j][j] for j in range(species)]
+    packing = float(np.sum(fluid.rho[0] * fluid.core[0, like] ** 3))
+    out = np.empty(species)
+    for j in range(species):
+        unit = packing / fluid.core[0, like[j]] ** 3  # density of pure j as densely packed
+        stencil = CENTRAL if fluid.rho[0, j] > 2.0 * STEP * unit else FORWARD
+
+        def displaced(t: float, j: int = j, unit: float = unit) -> Fluid:
+            rho = fluid.rho.copy()
+            rho[0, j] += t * unit
+            return Fluid(rho, fluid.core, fluid.edge, fluid.attraction)
+
+        response = Response(equations, x, reference, displaced, stencil)
+        out[j] = response.slope(_energy_density) / unit
+    return out
+
+
+def _energy_density(seen: Observables, fluid: Fluid) -> float:
+    """U/(V kT)."""
+    return float(seen.energy) * float(fluid.rho.sum())

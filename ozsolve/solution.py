@@ -14,7 +14,7 @@ from ozsolve.grid import Grid
 from ozsolve.mixture import Mixture, State
 from ozsolve.oz import lowest_eigenvalue, unpack
 from ozsolve.potential import Array
-from ozsolve.response import density_derivatives
+from ozsolve.response import density_derivatives, partial_energies
 from ozsolve.root import bridge_function
 from ozsolve.stopping import Status
 from ozsolve.thermodynamics import (
@@ -243,6 +243,17 @@ class Solution:
     def energy_density_slope(self) -> float:
         """d(U/N)/d ln rho at constant temperature and composition, energy unit."""
         return self._density_derivatives[1] * self.state.temperature
+
+    @cached_property
+    def partial_energies(self) -> Array:
+        """(dU/dN_j) at constant temperature and volume, shape (s,), energy unit; NaN for a failed solution.
+
+        sum_j x_j of it is U/N + d(U/N)/d ln rho. Defined for species at zero density too.
+        """
+        if not self.status.usable:
+            return _frozen(np.full(self.mixture.species, np.nan))
+        found = partial_energies(self.fine.equations, self.fine.x, self.fine.reference)
+        return _frozen(found * self.state.temperature)
 
     @property
     def route_gap(self) -> float:
