@@ -79,10 +79,11 @@ class Response:
             for offset, side in zip(self._offsets, self._sides, strict=True)
         ]
 
-    def slope(self, number: Callable[[Observables, Fluid], float]) -> float:
-        """Derivative, per unit of t, of a number read off observables and the fluid they belong to."""
-        values = [number(end, side.fluid) for end, side in zip(self.ends(), self._sides, strict=True)]
-        return float(np.dot(self._weights, values))
+    def slope(self, name: str) -> Array | float:
+        """Derivative of the named field of `Observables`, per unit of t."""
+        values = np.array([getattr(end, name) for end in self.ends()])
+        found = np.tensordot(self._weights, values, axes=1)
+        return float(found) if found.ndim == 0 else np.asarray(found)
 
 
 def density_derivatives(equations: Equations, x: Array, reference: Array) -> tuple[float, float]:
@@ -117,6 +118,8 @@ def partial_energies(equations: Equations, x: Array, reference: Array) -> Array:
     species = fluid.rho.shape[1]
     like = [pair_index(species)[j][j] for j in range(species)]
     packing = float(np.sum(fluid.rho[0] * fluid.core[0, like] ** 3))
+    total = float(fluid.rho.sum())
+    energy = float(observe(equations, x).energy)
     out = np.empty(species)
     for j in range(species):
         unit = packing / fluid.core[0, like[j]] ** 3  # density of pure j as densely packed
@@ -128,10 +131,5 @@ def partial_energies(equations: Equations, x: Array, reference: Array) -> Array:
             return Fluid(rho, fluid.core, fluid.edge, fluid.attraction)
 
         response = Response(equations, x, reference, displaced, stencil)
-        out[j] = response.slope(_energy_density) / unit
+        out[j] = energy + total * float(response.slope("energy")) / unit  # U/V = total * U/N
     return out
-
-
-def _energy_density(seen: Observables, fluid: Fluid) -> float:
-    """U/(V kT)."""
-    return float(seen.energy) * float(fluid.rho.sum())

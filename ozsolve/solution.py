@@ -269,6 +269,12 @@ class Solution:
         return self.observables.h_zero * self.length**3
 
     @property
+    def direct_correlation_integrals(self) -> Array:
+        """c_ij(k = 0) = int c_ij d3r, shape (s, s), cubed length unit: delta_ij/rho_i - c_ij(0) is
+        d(beta mu_i)/d rho_j at constant temperature. Finite at infinite dilution."""
+        return _frozen(self.observables.c_zero * self.length**3)
+
+    @property
     def concentration_structure_factor(self) -> Array:
         """S_cc(0) = N <dx_i dx_j>, shape (s, s); [0, 0] is the usual number for two species."""
         return concentration_fluctuations(self.observables.h_zero, self.fine.fluid.rho[0])
