@@ -20,13 +20,20 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from localcomp.activity_parts import (
-    Activity, Array, Parts, flory_huggins, hard_spheres_at_packing, mole_fractions_of, nothing, volume_fractions,
+    Activity,
+    Array,
+    Parts,
+    flory_huggins,
+    hard_spheres_at_packing,
+    mole_fractions_of,
+    nothing,
+    volume_fractions,
 )  # fmt: skip
 from localcomp.betapath import BetaPath, beta_paths
 from localcomp.chebyshev import Interpolant, chebyshev_points
@@ -207,9 +214,7 @@ def _direct(
     count, size = x.shape
     pures = pure_paths(mixture, temperature, [eta] * size, closure, accuracy)
     state = State(temperature, tuple(np.eye(size)[0]), packing_fraction=eta)
-    paths = beta_paths(
-        [(mixture, replace(state, mole_fractions=tuple(row))) for row in x], closure, accuracy
-    )
+    paths = beta_paths([(mixture, replace(state, mole_fractions=tuple(row))) for row in x], closure, accuracy)
     volume = mixture.diameter**3
     nan = nothing(count, size)
     attraction, error, kb = nan.copy(), nan.copy(), nan.copy()

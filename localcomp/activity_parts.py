@@ -133,7 +133,7 @@ def hard_spheres_at_packing(diameter: Array, x: Array, eta: float) -> Array:
     """Hard-sphere part of ln gamma at constant packing fraction, shape (m, s)."""
     rows = [_hard_row(diameter, row, eta) for row in x]
     pures = np.array([bmcsl_helmholtz(densities(diameter, row, eta), diameter) for row in np.eye(len(diameter))])
-    return np.array(rows) - pures
+    return np.asarray(np.array(rows) - pures)
 
 
 def _hard_row(diameter: Array, x: Array, eta: float) -> Array:

@@ -94,6 +94,11 @@ class BetaPath:
         return float(self._weights @ self.energies)
 
     @property
+    def z_attraction(self) -> float:
+        """Attraction part of Z: d[A_attraction/(N kT)]/d ln rho."""
+        return float(self._weights @ [s.energy_density_slope for s in self.solutions]) / self.state.temperature
+
+    @property
     def helmholtz_error(self) -> float:
         """Error bar of it: of the solved energies, all taken in one direction, and of the quadrature."""
         return float(self._weights @ self.energy_errors) + quadrature_error(self.energies)
@@ -121,7 +126,7 @@ def quadrature_error(values: Array) -> float:
         return 0.0
     before = max(float(coefficients[-3]), float(coefficients[-4]), last)
     ratio = min((last / before) ** 0.5, 1.0)
-    return last * ratio ** (len(values) - 1)
+    return float(last * ratio ** (len(values) - 1))
 
 
 def beta_paths(

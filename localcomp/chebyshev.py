@@ -30,7 +30,7 @@ class Interpolant:
         points = 2.0 * chebyshev_points(degree) - 1.0
         flat = np.asarray(values, dtype=np.float64).reshape(degree + 1, -1)
         self._shape = values.shape[1:]
-        self.coefficients: Array = np.linalg.solve(chebyshev.chebvander(points, degree), flat)
+        self.coefficients: Array = np.asarray(np.linalg.solve(chebyshev.chebvander(points, degree), flat), np.float64)
 
     def __call__(self, s: Array) -> Array:
         """Values at s of shape (m,); shape (m, ...)."""
@@ -38,11 +38,11 @@ class Interpolant:
 
     def slope(self, s: Array) -> Array:
         """Derivative by s."""
-        return self._evaluate(2.0 * chebyshev.chebder(self.coefficients), s)
+        return self._evaluate(np.asarray(2.0 * chebyshev.chebder(self.coefficients), np.float64), s)
 
     def integral(self, s: Array) -> Array:
         """Integral from 0 to s."""
-        return self._evaluate(chebyshev.chebint(0.5 * self.coefficients, lbnd=-1), s)
+        return self._evaluate(np.asarray(chebyshev.chebint(0.5 * self.coefficients, lbnd=-1), np.float64), s)
 
     def shortened(self) -> Interpolant:
         """Without its last two coefficients: what the difference says about the ones left out."""
@@ -53,4 +53,4 @@ class Interpolant:
 
     def _evaluate(self, coefficients: Array, s: Array) -> Array:
         found = chebyshev.chebval(2.0 * np.asarray(s) - 1.0, coefficients, tensor=True)
-        return np.asarray(np.moveaxis(np.atleast_2d(found), 0, -1)).reshape(len(s), *self._shape)
+        return np.asarray(np.moveaxis(np.atleast_2d(found), 0, -1), np.float64).reshape(len(s), *self._shape)

@@ -75,8 +75,7 @@ class Response:
     def ends(self) -> list[Observables]:
         """Observables at the stencil's offsets (`CENTRAL`: backward, forward), to first order in the solution."""
         return [
-            observe(side, self._x + offset * self.dx)
-            for offset, side in zip(self._offsets, self._sides, strict=True)
+            observe(side, self._x + offset * self.dx) for offset, side in zip(self._offsets, self._sides, strict=True)
         ]
 
     def slope(self, name: str) -> Array | float:
