@@ -33,7 +33,9 @@ from localcomp.activity_parts import (
     hard_spheres_at_packing,
     mole_fractions_of,
     nothing,
+    scan_rows,
     volume_fractions,
+    with_curve,
 )  # fmt: skip
 from localcomp.betapath import BetaPath, beta_paths
 from localcomp.chebyshev import Interpolant, chebyshev_points
@@ -106,7 +108,7 @@ def activity_at_packing(
         for n in todo:
             nodes = [paths[n, float(s)] for s in chebyshev_points(degree)]
             if all(path.usable for path in nodes):
-                found[n] = _isotherm(mixture, kelvins[n], packing_fraction, x, closure, nodes)
+                found[n] = with_curve(_isotherm(mixture, kelvins[n], packing_fraction, scan_rows(x), closure, nodes))
             elif found[n] is None:
                 found[n] = _direct(mixture, kelvins[n], packing_fraction, x, closure, accuracy, routes)
     return [activity for activity in found if activity is not None]
@@ -162,8 +164,7 @@ def _isotherm(
         excess_energy=internal(s) * (x @ volume),
         excess_volume=np.zeros(len(x)), excess_enthalpy=np.full(len(x), math.nan),
         numerical_error=cut + bar * volume, interpolation_error=float(cut.max()), interpolated=True,
-        kirkwood_buff=kb, inverse_scc=Interpolant(scc)(s), reasons=("",) * len(x), node_fractions=points,
-        node_inverse_scc=scc, pressure=None,
+        kirkwood_buff=kb, inverse_scc=Interpolant(scc)(s), reasons=("",) * len(x), curve=None, pressure=None,
     )  # fmt: skip
 
 
@@ -239,6 +240,5 @@ def _direct(
         packing_fraction=np.full(count, eta), ln_gamma=ln_gamma, parts=Parts(fh, hs, attraction),
         excess_free_energy=np.sum(x * ln_gamma, axis=1), excess_energy=energy, excess_volume=np.zeros(count),
         excess_enthalpy=np.full(count, math.nan), numerical_error=error, interpolation_error=0.0, interpolated=False,
-        kirkwood_buff=kb, inverse_scc=scc, reasons=tuple(path.reason for path in paths), node_fractions=None,
-        node_inverse_scc=None, pressure=None,
+        kirkwood_buff=kb, inverse_scc=scc, reasons=tuple(path.reason for path in paths), curve=None, pressure=None,
     )  # fmt: skip

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,6 +21,28 @@ class Parts:
     flory_huggins: Array
     hard_sphere: Array
     attraction: Array
+
+
+SCAN_POINTS = 101
+"""Compositions of a curve."""
+
+
+@dataclass(frozen=True)
+class Curve:
+    """A whole isotherm of two species, for figures and the search for splitting.
+
+    Attributes
+    ----------
+    mole_fractions : ndarray, shape (p, 2)
+        From pure species 2 to pure species 1, ends included.
+    ln_gamma, kirkwood_buff : ndarray, shape (p, 2)
+    inverse_scc : ndarray, shape (p,)
+    """
+
+    mole_fractions: Array
+    ln_gamma: Array
+    kirkwood_buff: Array
+    inverse_scc: Array
 
 
 @dataclass(frozen=True)
@@ -62,8 +84,8 @@ class Activity:
         x1 x2/S_cc(0) (more species: see `stability`): 1 if ideal, 0 at the spinodal of the closure.
     reasons : tuple of str
         Empty where a composition is available.
-    node_fractions, node_inverse_scc : ndarray or None
-        Volume fractions of the first species at the interpolation's points, and x1 x2/S_cc(0) there.
+    curve : Curve or None
+        The isotherm, where it could be interpolated.
     """
 
     mixture: Mixture
@@ -85,8 +107,7 @@ class Activity:
     kirkwood_buff: Array
     inverse_scc: Array
     reasons: tuple[str, ...]
-    node_fractions: Array | None
-    node_inverse_scc: Array | None
+    curve: Curve | None
 
     @property
     def route_gap(self) -> Array:
@@ -97,6 +118,28 @@ class Activity:
     def available(self) -> NDArray[np.bool_]:
         """Which compositions have numbers, shape (m,)."""
         return np.array([not reason for reason in self.reasons])
+
+
+def scan_rows(x: Array) -> Array:
+    """The compositions asked with those of the curve behind them."""
+    first = np.linspace(0.0, 1.0, SCAN_POINTS)
+    return np.concatenate((x, np.stack((first, 1.0 - first), axis=1)))
+
+
+def with_curve(whole: Activity) -> Activity:
+    """From one for `scan_rows`: the compositions asked, and the curve apart."""
+    head, tail = slice(None, -SCAN_POINTS), slice(-SCAN_POINTS, None)
+    curve = Curve(whole.mole_fractions[tail], whole.ln_gamma[tail], whole.kirkwood_buff[tail], whole.inverse_scc[tail])
+    parts = whole.parts
+    rows = {
+        name: getattr(whole, name)[head]
+        for name in (
+            "mole_fractions", "packing_fraction", "ln_gamma", "excess_free_energy", "excess_energy", "excess_volume",
+            "excess_enthalpy", "numerical_error", "kirkwood_buff", "inverse_scc", "reasons",
+        )
+    }  # fmt: skip
+    short = Parts(parts.flory_huggins[head], parts.hard_sphere[head], parts.attraction[head])
+    return replace(whole, parts=short, curve=curve, **rows)
 
 
 def nothing(count: int, species: int) -> Array:

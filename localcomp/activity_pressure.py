@@ -26,7 +26,9 @@ from localcomp.activity_parts import (
     flory_huggins,
     mole_fractions_of,
     nothing,
+    scan_rows,
     volume_fractions,
+    with_curve,
 )  # fmt: skip
 from localcomp.betapath import BetaPath, beta_paths
 from localcomp.chebyshev import Interpolant, chebyshev_points
@@ -209,7 +211,7 @@ def activity_at_pressure(
         _need(pures, mixture)
         if all(state.path is not None for state in along):
             at_nodes = _assemble(mixture, temperature, pressure, nodes, closure, along, pures)
-            return _interpolated(at_nodes, x, along, pures)
+            return with_curve(_interpolated(at_nodes, scan_rows(x), along, pures))
     else:
         pures = solved(np.eye(size))
         _need(pures, mixture)
@@ -260,7 +262,7 @@ def _assemble(
         excess_free_energy=np.sum(x * ln_gamma, axis=1), excess_energy=energy, excess_volume=molecular,
         excess_enthalpy=energy + pressure / temperature * molecular, numerical_error=error, interpolation_error=0.0,
         interpolated=False, kirkwood_buff=nothing(count, size), inverse_scc=scc,
-        reasons=tuple(state.reason for state in found), node_fractions=None, node_inverse_scc=None,
+        reasons=tuple(state.reason for state in found), curve=None,
         pressure=pressure,
     )  # fmt: skip
 
@@ -305,5 +307,5 @@ def _interpolated(nodes: Activity, x: Array, along: list[LiquidState], pures: li
         excess_enthalpy=energy + nodes.pressure / nodes.temperature * molecular,
         numerical_error=Interpolant(nodes.numerical_error)(s) + cut, interpolation_error=float(cut.max()),
         interpolated=True, kirkwood_buff=kb, inverse_scc=Interpolant(nodes.inverse_scc)(s), reasons=("",) * len(x),
-        node_fractions=points, node_inverse_scc=nodes.inverse_scc,
+        curve=None,
     )  # fmt: skip

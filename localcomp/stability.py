@@ -12,7 +12,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from ozsolve import Solution
+from ozsolve import Mixture, Solution, State, solve
 
 Array = NDArray[np.float64]
 
@@ -82,3 +82,38 @@ def stability_criterion(x: Array, ln_gamma: Array) -> Array:
     """
     ratio = ln_gamma[:, 0] - ln_gamma[:, 1]
     return np.asarray(1.0 + x * (1.0 - x) * np.gradient(ratio, x, edge_order=2))
+
+
+BISECTIONS = 7
+
+
+def branch_ends(
+    mixture: Mixture, temperature: float, eta: float, x: Array, good: NDArray[np.bool_], closure: str, accuracy: float
+) -> list[tuple[float, float]]:
+    """Composition ranges of two species without a solution of the closure, each found by bisection.
+
+    Parameters
+    ----------
+    x : ndarray, shape (m,)
+        Mole fractions of the first species that were tried, rising.
+    good : ndarray of bool, shape (m,)
+        Which of them have a solution.
+
+    Returns
+    -------
+    list of (float, float)
+        Last composition with a solution on either side, within the spacing of x over 2^7.
+    """
+
+    def solvable(fraction: float) -> bool:
+        state = State(temperature, (fraction, 1.0 - fraction), packing_fraction=eta)
+        return solve(mixture, state, closure=closure, accuracy=accuracy, on_failure="return").status.usable
+
+    edges = []
+    for n in np.flatnonzero(good[:-1] != good[1:]):
+        inside, outside = (float(x[n]), float(x[n + 1])) if good[n] else (float(x[n + 1]), float(x[n]))
+        for _ in range(BISECTIONS):
+            middle = 0.5 * (inside + outside)
+            inside, outside = (middle, outside) if solvable(middle) else (inside, middle)
+        edges.append(inside)
+    return list(zip(edges[::2], edges[1::2], strict=False))

@@ -10,7 +10,7 @@ from typing import Annotated
 import typer
 
 from localcomp import __version__
-from localcomp.cli import calibrate_command, new_command, state_command, study_command
+from localcomp.cli import activity_command, calibrate_command, new_command, state_command, study_command
 from localcomp.errors import BadInput, LocalcompError, NoAnswer
 
 WRONG_INPUT = 2
@@ -43,6 +43,7 @@ def _root(
 
 app.command("new")(new_command.new)
 app.command("state")(state_command.state)
+app.command("activity")(activity_command.activity)
 app.command("calibrate")(calibrate_command.calibrate)
 app.command("check")(study_command.check)
 app.command("sweep")(study_command.sweep)
