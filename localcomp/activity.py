@@ -20,10 +20,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import replace
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from localcomp.activity_parts import (
     Activity,
@@ -44,7 +43,7 @@ from localcomp.kirkwoodbuff import isotherm_ln_gamma, ray_ln_gamma
 from localcomp.stability import inverse_concentration_fluctuations
 from ozsolve import DEFAULT_ACCURACY, Mixture, State, get_closure
 
-DEGREES = (8, 16)
+DEGREES = (10, 20)
 """Degrees in the volume fraction, tried in turn; the points of each are among those of the next."""
 WANTED = 3e-5
 """Estimated error of ln gamma from interpolation that is good enough."""
@@ -110,7 +109,9 @@ def activity_at_packing(
             if all(path.usable for path in nodes):
                 found[n] = with_curve(_isotherm(mixture, kelvins[n], packing_fraction, scan_rows(x), closure, nodes))
             elif found[n] is None:
-                found[n] = _direct(mixture, kelvins[n], packing_fraction, x, closure, accuracy, routes)
+                first = mole_fractions_of(mixture.diameter, _both(chebyshev_points(degree)))[:, 0]
+                tried = first, np.array([path.usable for path in nodes])
+                found[n] = _direct(mixture, kelvins[n], packing_fraction, x, closure, accuracy, routes, tried)
     return [activity for activity in found if activity is not None]
 
 
@@ -133,7 +134,7 @@ def _solve_nodes(
     keys = [(n, float(s)) for n in todo for s in chebyshev_points(degree) if (n, float(s)) not in paths]
     ends = []
     for n, s in keys:
-        row = mole_fractions_of(mixture.diameter, np.array([[s, 1.0 - s]]))[0]
+        row = mole_fractions_of(mixture.diameter, _both(np.array([s])))[0]
         ends.append((mixture, State(kelvins[n], tuple(row), packing_fraction=eta)))
     paths.update(zip(keys, beta_paths(ends, closure, accuracy), strict=True))
 
@@ -168,6 +169,11 @@ def _isotherm(
     )  # fmt: skip
 
 
+def _both(s: Array) -> Array:
+    """Fractions of both species from those of the first, shape (m, 2)."""
+    return np.stack((s, 1.0 - s), axis=1)
+
+
 def _mixing(values: Array, points: Array) -> Array:
     """Values over the straight line between the ends, shape (n,)."""
     return np.asarray(values - values[-1] * points - values[0] * (1.0 - points))
@@ -179,11 +185,34 @@ def _partial(f: Interpolant, volume: Array, s: Array) -> Array:
     return np.stack((volume[0] * (value + (1.0 - s) * slope), volume[1] * (value - s * slope)), axis=1)
 
 
+LEAST_DECAY = 0.1
+"""Coefficients do not shrink evenly: two more are never counted on for more than this."""
+
+
 def _decay(coefficients: Array) -> float:
-    """By how much two more coefficients shrink, from the last four; at most 1."""
+    """By how much two more coefficients shrink, from the last four; between `LEAST_DECAY` and 1."""
     sizes = np.abs(coefficients).reshape(len(coefficients), -1).max(axis=1)
     before = float(sizes[-4:-2].max())
-    return min(float(sizes[-2:].max()) / before, 1.0) if before > 0.0 else 0.0
+    return min(max(float(sizes[-2:].max()) / before, LEAST_DECAY), 1.0) if before > 0.0 else 0.0
+
+
+def disconnected(fraction: Array, good: NDArray[np.bool_], asked: Array) -> NDArray[np.bool_]:
+    """Which compositions of two species lie between compositions without a solution.
+
+    A solution there is an island inside the two-phase region: its path in beta, or the isotherm, has crossed
+    it. Shape of `asked`.
+
+    Parameters
+    ----------
+    fraction : ndarray, shape (p,)
+        Of the first species, everything that was tried.
+    good : ndarray of bool, shape (p,)
+    asked : ndarray, shape (m,)
+    """
+    bad = fraction[~good]
+    if len(bad) == 0:
+        return np.zeros(len(asked), bool)
+    return np.asarray((asked > bad.min()) & (asked < bad.max()))
 
 
 def pure_paths(
@@ -209,13 +238,23 @@ def pure_paths(
 
 
 def _direct(
-    mixture: Mixture, temperature: float, eta: float, x: Array, closure: str, accuracy: float, routes: bool
-) -> Activity:
-    """Any number of species: implicit derivatives at every composition whose path is available."""
+    mixture: Mixture, temperature: float, eta: float, x: Array, closure: str, accuracy: float, routes: bool,
+    tried: tuple[Array, NDArray[np.bool_]] | None = None,
+) -> Activity:  # fmt: skip
+    """Any number of species: implicit derivatives at every composition whose path is available.
+
+    `tried`: for two species, fractions of the first that were tried before, and which have a path.
+    """
     count, size = x.shape
     pures = pure_paths(mixture, temperature, [eta] * size, closure, accuracy)
-    state = State(temperature, tuple(np.eye(size)[0]), packing_fraction=eta)
-    paths = beta_paths([(mixture, replace(state, mole_fractions=tuple(row))) for row in x], closure, accuracy)
+    ends = [(mixture, State(temperature, tuple(row), packing_fraction=eta)) for row in x]
+    paths = beta_paths(ends, closure, accuracy)
+    reasons = [path.reason for path in paths]
+    if tried is not None:
+        fraction = np.append(tried[0], x[:, 0])
+        good = np.append(tried[1], [not reason for reason in reasons])
+        for n in np.flatnonzero(disconnected(fraction, good, x[:, 0])).tolist():
+            reasons[n] = reasons[n] or "it lies between compositions without a solution, in the two-phase region"
     volume = mixture.diameter**3
     nan = nothing(count, size)
     attraction, error, kb = nan.copy(), nan.copy(), nan.copy()
@@ -224,7 +263,7 @@ def _direct(
     pure_a = np.array([path.helmholtz for path in pures])
     pure_bar = np.array([path.helmholtz_error for path in pures])
     for n, path in enumerate(paths):
-        if not path.usable:
+        if reasons[n]:
             continue
         mu, share = path.chemical_potentials(), volume / float(x[n] @ volume)
         attraction[n] = mu - share * float(x[n] @ mu - path.helmholtz) - pure_a
@@ -240,5 +279,5 @@ def _direct(
         packing_fraction=np.full(count, eta), ln_gamma=ln_gamma, parts=Parts(fh, hs, attraction),
         excess_free_energy=np.sum(x * ln_gamma, axis=1), excess_energy=energy, excess_volume=np.zeros(count),
         excess_enthalpy=np.full(count, math.nan), numerical_error=error, interpolation_error=0.0, interpolated=False,
-        kirkwood_buff=kb, inverse_scc=scc, reasons=tuple(path.reason for path in paths), curve=None, pressure=None,
+        kirkwood_buff=kb, inverse_scc=scc, reasons=tuple(reasons), curve=None, pressure=None,
     )  # fmt: skip
