@@ -17,7 +17,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import ArrayLike
 
-from localcomp.activity import DEGREES, checked_fractions
+from localcomp.activity import ISLAND, checked_fractions, disconnected
 from localcomp.activity_parts import (
     Activity,
     Array,
@@ -40,6 +40,8 @@ from localcomp.kirkwoodbuff import pressure_slope
 from localcomp.stability import inverse_concentration_fluctuations
 from ozsolve import DEFAULT_ACCURACY, Mixture, State, get_closure
 
+DEGREE = 8
+"""In the volume fraction; the values at its points are exact derivatives already, so that fewer serve."""
 PRESSURE_TOLERANCE = 1e-6
 """On Z - P/(rho kT); ln gamma then moves by less, since P enters it through excess volumes only."""
 MOST_ROUNDS = 12
@@ -204,7 +206,7 @@ def activity_at_pressure(
         return liquids_at_pressure(mixture, temperature, pressure, rows, begin, closure, accuracy)
 
     if size == 2:
-        points = chebyshev_points(DEGREES[0])
+        points = chebyshev_points(DEGREE)
         nodes = mole_fractions_of(mixture.diameter, np.stack((points, 1.0 - points), axis=1))
         along = solved(nodes)
         pures = [along[-1], along[0]]
@@ -212,10 +214,16 @@ def activity_at_pressure(
         if all(state.path is not None for state in along):
             at_nodes = _assemble(mixture, temperature, pressure, nodes, closure, along, pures)
             return with_curve(_interpolated(at_nodes, scan_rows(x), along, pures))
+        found = solved(x)
+        fraction = np.concatenate((nodes[:, 0], x[:, 0]))
+        good = np.array([state.path is not None for state in (*along, *found)])
+        for n in np.flatnonzero(disconnected(fraction, good, x[:, 0])).tolist():
+            found[n] = replace(found[n], path=None, packing_fraction=math.nan, reason=found[n].reason or ISLAND)
     else:
         pures = solved(np.eye(size))
         _need(pures, mixture)
-    return _assemble(mixture, temperature, pressure, x, closure, solved(x), pures)
+        found = solved(x)
+    return _assemble(mixture, temperature, pressure, x, closure, found, pures)
 
 
 def _need(pures: list[LiquidState], mixture: Mixture) -> None:

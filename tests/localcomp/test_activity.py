@@ -271,7 +271,7 @@ def test_volume_fraction_converges_fastest() -> None:
         s = chebyshev_points(degree)
         weight = mixture.diameter**power
         x = mole_fractions_of(weight ** (1.0 / 3.0), np.stack((s, 1.0 - s), axis=1))
-        paths = beta_paths([(mixture, State(temperature, tuple(r), packing_fraction=eta)) for r in x], "rhnc", 1e-6, 4)
+        paths = beta_paths([(mixture, State(temperature, tuple(r), packing_fraction=eta)) for r in x], "rhnc", 1e-5, 3)
         f = np.array([path.helmholtz for path in paths]) / (x @ weight)
         f -= f[-1] * s + f[0] * (1.0 - s)
         return float(-weight[1] * Interpolant(f).slope(np.array([1.0]))[0])
