@@ -74,8 +74,9 @@ def activity_at_packing(
     accuracy : float
         Relative, on coordination numbers.
     routes : bool
-        Whether to integrate the Kirkwood-Buff route too (for two species it costs nothing; for more it takes
-        further states).
+        Whether to integrate the Kirkwood-Buff route too. For two species it costs nothing. For more it takes
+        further states, and these also show whether a composition is cut off from every pure liquid by
+        compositions without a solution; without the routes that goes unseen.
 
     Returns
     -------
@@ -185,6 +186,10 @@ def _partial(f: Interpolant, volume: Array, s: Array) -> Array:
     return np.stack((volume[0] * (value + (1.0 - s) * slope), volume[1] * (value - s * slope)), axis=1)
 
 
+ISLAND = "it lies between compositions without a solution, in the two-phase region"
+NO_WAY_OUT = (
+    "no straight line of compositions to a pure liquid has solutions throughout: it lies in the two-phase region"
+)
 LEAST_DECAY = 0.1
 """Coefficients do not shrink evenly: two more are never counted on for more than this."""
 
@@ -254,7 +259,7 @@ def _direct(
         fraction = np.append(tried[0], x[:, 0])
         good = np.append(tried[1], [not reason for reason in reasons])
         for n in np.flatnonzero(disconnected(fraction, good, x[:, 0])).tolist():
-            reasons[n] = reasons[n] or "it lies between compositions without a solution, in the two-phase region"
+            reasons[n] = reasons[n] or ISLAND
     volume = mixture.diameter**3
     nan = nothing(count, size)
     attraction, error, kb = nan.copy(), nan.copy(), nan.copy()
@@ -265,13 +270,16 @@ def _direct(
     for n, path in enumerate(paths):
         if reasons[n]:
             continue
+        if routes:
+            kb[n] = ray_ln_gamma(mixture, path.state, path.end, closure, accuracy)
+            if np.isnan(kb[n]).all():
+                reasons[n] = NO_WAY_OUT
+                continue
         mu, share = path.chemical_potentials(), volume / float(x[n] @ volume)
         attraction[n] = mu - share * float(x[n] @ mu - path.helmholtz) - pure_a
         error[n] = share * path.helmholtz_error + pure_bar
         energy[n] = path.energies[-1] - x[n] @ pure_energy
         scc[n] = inverse_concentration_fluctuations([path.end])[0]
-        if routes:
-            kb[n] = ray_ln_gamma(mixture, path.state, path.end, closure, accuracy)
     fh, hs = flory_huggins(mixture.diameter, x), hard_spheres_at_packing(mixture.diameter, x, eta)
     ln_gamma = fh + hs + attraction
     return Activity(

@@ -116,7 +116,7 @@ def test_splitting_is_a_warning(write: Callable[..., Path]) -> None:
     body = as_json(report)
     assert body["status"] == "partly_available"
     assert body["ln_gamma"][5] == [None, None]
-    ((low, high), *rest) = body["stability"]["splitting"]["no_solution"]
+    ((low, high), *_) = body["stability"]["splitting"]["no_solution"]
     assert low < 0.2
     assert high > 0.2
     assert any("spinodal" in note for note in body["warnings"])

@@ -155,6 +155,22 @@ def test_a_pressure_without_liquid_is_no_answer() -> None:
         activity_at_pressure(Mixture([1.0, 1.0], [1.0, 1.2]), 1.0, -50.0, ROWS)
 
 
+def test_a_splitting_mixture_at_constant_pressure_has_no_numbers_between() -> None:
+    mixture = Mixture([1.0, 1.0], [1.0, 1.0], k=0.4)
+    found = activity_at_pressure(mixture, 1.2, 2.0, [[0.0, 1.0], [0.5, 0.5]])
+    assert found.available.tolist() == [True, False]
+    assert np.isnan(found.ln_gamma[1]).all()
+    assert found.ln_gamma[0, 0] > 2.0
+
+
+def test_three_species_inside_the_two_phase_region() -> None:
+    """As two species, one of them split in two: the island on the symmetry line has no way out."""
+    k = np.array([[0.0, 0.0, 0.4], [0.0, 0.0, 0.4], [0.4, 0.4, 0.0]])
+    mixture = Mixture([1.0, 1.0, 1.0], [1.0, 1.0, 1.0], k=k)
+    found = activity_at_packing(mixture, 1.2, 0.4, [[0.25, 0.25, 0.5], [0.0, 0.01, 0.99]])[0]
+    assert found.available.tolist() == [False, True]
+
+
 # --- stability ---------------------------------------------------------------------------------------
 
 
