@@ -8,6 +8,7 @@ from ozsolve.closures import CLOSURES, HNC, MSA, PY, RHNC, Closure, get_closure
 from ozsolve.errors import InputError, NotConverged, OzsolveError
 from ozsolve.many import solve_many
 from ozsolve.mixture import Mixture, State
+from ozsolve.paths import solve_paths
 from ozsolve.potential import PairOverride, PairTable
 from ozsolve.sensitivity import Sensitivity, sensitivity
 from ozsolve.solution import Solution, Stats
@@ -37,4 +38,5 @@ __all__ = [
     "sensitivity",
     "solve",
     "solve_many",
+    "solve_paths",
 ]

@@ -7,6 +7,7 @@ With f = G(x) - x and differences of the last `depth` steps dF, dG (newest again
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -29,6 +30,7 @@ class History:
     image: Array
     filled: int = 0
     restarts: int = 0
+    primed: bool = False
 
     def keep(self, rows: Indices) -> None:
         """Drop the states of the batch that are not listed."""
@@ -88,9 +90,29 @@ class Anderson:
             filled=-1,
         )
 
+    def primed(self, x: Array, memory: Sequence[tuple[Array, Array] | None]) -> History:
+        """State for a batch that begins with secant pairs of neighbouring states, (dF, dG) each (up to depth, size).
+
+        They act as Anderson's own until they are overwritten, oldest first. Missing pairs are zero and do nothing.
+        """
+        history = self.start(x)
+        for row, pairs in enumerate(memory):
+            if pairs is not None:
+                count = min(len(pairs[0]), self.depth)
+                history.d_residual[row, self.depth - count :] = pairs[0][-count:]
+                history.d_image[row, self.depth - count :] = pairs[1][-count:]
+        history.gram = np.matmul(history.d_residual, history.d_residual.transpose(0, 2, 1))
+        history.gram[:, range(self.depth), range(self.depth)] *= 1.0 + RIDGE
+        history.filled = self.depth
+        history.primed = True
+        return history
+
     def step(self, image: Array, residual: Array, history: History) -> Array:
         """The next x from G(x) and G(x) - x, both of shape (b, size)."""
-        if history.filled < 0:
+        if history.primed:
+            history.primed = False
+            following = _extrapolate(image, residual, history, self.depth)
+        elif history.filled < 0:
             history.filled = 0
             following = image.copy()
         else:
@@ -135,7 +157,12 @@ def _step_many(image: Array, residual: Array, history: History, slot: int, used:
     row[:, slot] *= 1.0 + RIDGE
     history.gram[:, slot, :used] = row
     history.gram[:, :used, slot] = row
-    target = np.matmul(d_residual, residual[:, :, None])
+    return _extrapolate(image, residual, history, used)
+
+
+def _extrapolate(image: Array, residual: Array, history: History, used: int) -> Array:
+    """G - dG theta with the pairs in memory; a singular memory is thrown away."""
+    target = np.matmul(history.d_residual[:, :used], residual[:, :, None])
     safe = history.gram[:, :used, :used] + np.finfo(np.float64).tiny * np.eye(used)  # a finished state may stand still
     try:
         theta = np.linalg.solve(safe, target)

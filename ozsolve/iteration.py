@@ -6,6 +6,7 @@ other lets states leave as they finish.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -127,6 +128,7 @@ def iterate_many(
     stepper: Anderson,
     recycled: Recycled | None = None,
     capture: bool = False,
+    memory: Sequence[tuple[Array, Array] | None] | None = None,
 ) -> BatchOutcome:
     """Iterate a batch; states leave as they converge or fail, each by its own residual.
 
@@ -138,6 +140,8 @@ def iterate_many(
         Secant pairs of a neighbour of all these states.
     capture : bool
         Keep every state's secant pairs in the outcome.
+    memory : sequence of (dF, dG) or None, optional
+        Secant pairs each state begins with.
     """
     batch = len(x)
     out = BatchOutcome(
@@ -147,7 +151,7 @@ def iterate_many(
     active = np.arange(batch)
     still_open = np.ones(batch, bool)
     best = np.full(batch, np.inf)
-    history = stepper.start(x)
+    history = stepper.start(x) if memory is None else stepper.primed(x, memory)
     with np.errstate(all="ignore"):
         for step in range(1, rule.max_steps + 2):
             image, pivots = equations.apply(x)

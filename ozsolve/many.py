@@ -41,7 +41,7 @@ SEED_DEPTH = 16
 
 
 @dataclass
-class _Family:
+class SharedReference:
     """States with one hard-sphere reference on one pair of grids."""
 
     members: list[int]
@@ -95,10 +95,10 @@ def solve_many(
     job = Job(
         cases, [fluid for fluid, _ in reduced], [length for _, length in reduced], chosen, accuracy, [None] * len(cases)
     )
-    for grid, families in _families(job):
-        _references(job, grid, families)
+    for grid, families in group_by_grid(job):
+        shared_references(job, grid, families)
         ready = [family for family in families if family.reference_fine is not None]
-        missed: list[tuple[_Family, int]] = []
+        missed: list[tuple[SharedReference, int]] = []
         for batch in _batches(ready):
             missed += _solve_batch(job, grid, batch)
         for batch in _second_attempts(missed):
@@ -110,7 +110,7 @@ def solve_many(
     ]
 
 
-def _families(job: Job) -> list[tuple[Grid, list[_Family]]]:
+def group_by_grid(job: Job) -> list[tuple[Grid, list[SharedReference]]]:
     """Families by grid."""
     grids: dict[tuple[float, int, int], Grid] = {}
     found: dict[tuple[float, int, int], dict[bytes, list[int]]] = {}
@@ -125,12 +125,12 @@ def _families(job: Job) -> list[tuple[Grid, list[_Family]]]:
         families = []
         for members in by_family.values():
             depths = np.concatenate([job.fluids[n].attraction for n in members])
-            families.append(_Family(members, depths, order=spread_order(depths)))
+            families.append(SharedReference(members, depths, order=spread_order(depths)))
         out.append((grids[key], families))
     return out
 
 
-def _references(job: Job, grid: Grid, families: list[_Family]) -> None:
+def shared_references(job: Job, grid: Grid, families: list[SharedReference]) -> None:
     """Percus-Yevick hard spheres of every family, on both grids when the closure needs them."""
     for start in range(0, len(families), BATCH):
         chunk = families[start : start + BATCH]
@@ -157,7 +157,7 @@ def _references(job: Job, grid: Grid, families: list[_Family]) -> None:
                     family.bridge, family.bridge_fine = bridges[n], bridges_fine[n]
 
 
-def _batches(families: list[_Family]) -> list[list[tuple[_Family, int]]]:
+def _batches(families: list[SharedReference]) -> list[list[tuple[SharedReference, int]]]:
     """(family, position in it): seeds of all families mixed, then the rest, a family at a time."""
     seeds = [(family, n) for family in families for n in family.order[:SEEDS]]
     batches = [seeds[start : start + BATCH] for start in range(0, len(seeds), BATCH)]
@@ -168,16 +168,16 @@ def _batches(families: list[_Family]) -> list[list[tuple[_Family, int]]]:
     return batches
 
 
-def _second_attempts(missed: list[tuple[_Family, int]]) -> list[list[tuple[_Family, int]]]:
+def _second_attempts(missed: list[tuple[SharedReference, int]]) -> list[list[tuple[SharedReference, int]]]:
     """States that did not converge from their first start, where their family knows more by now."""
-    again: dict[int, list[tuple[_Family, int]]] = {}
+    again: dict[int, list[tuple[SharedReference, int]]] = {}
     for family, n in missed:
         if family.recycled is not None and family.coarse.known:
             again.setdefault(id(family), []).append((family, n))
     return list(again.values())
 
 
-def _solve_batch(job: Job, grid: Grid, batch: list[tuple[_Family, int]]) -> list[tuple[_Family, int]]:
+def _solve_batch(job: Job, grid: Grid, batch: list[tuple[SharedReference, int]]) -> list[tuple[SharedReference, int]]:
     """One batch on both grids; solved states go to the job and to their family's memory, the others
     come back."""
     began = time.perf_counter()
@@ -215,7 +215,7 @@ def _solve_batch(job: Job, grid: Grid, batch: list[tuple[_Family, int]]) -> list
     return missed
 
 
-def _remember_secants(batch: list[tuple[_Family, int]], outcome: BatchOutcome, grid: Grid, pairs: int) -> None:
+def _remember_secants(batch: list[tuple[SharedReference, int]], outcome: BatchOutcome, grid: Grid, pairs: int) -> None:
     """Give each family the secant pairs of its first solved seed, on both grids."""
     for row, (family, _) in enumerate(batch):
         found = outcome.secants[row]
@@ -226,7 +226,7 @@ def _remember_secants(batch: list[tuple[_Family, int]], outcome: BatchOutcome, g
         family.recycled_fine = Recycled(*(regrid(rows, pairs, grid, finer) for rows in found))
 
 
-def _starts(job: Job, coarse: Equations, batch: list[tuple[_Family, int]]) -> Array:
+def _starts(job: Job, coarse: Equations, batch: list[tuple[SharedReference, int]]) -> Array:
     """Interpolated in the family where it has members already, else the mean spherical solution."""
     references = np.array([family.reference for family, _ in batch])
     guesses = [family.coarse.at(family.depths[n]) for family, n in batch]
@@ -246,7 +246,7 @@ def _starts(job: Job, coarse: Equations, batch: list[tuple[_Family, int]]) -> Ar
 
 
 def _accept(
-    job: Job, batch: list[tuple[_Family, int]], coarse: Equations, fine: Equations, first: BatchOutcome,
+    job: Job, batch: list[tuple[SharedReference, int]], coarse: Equations, fine: Equations, first: BatchOutcome,
     second: BatchOutcome, rows: Indices, lifted: Array, began: float,
 ) -> None:  # fmt: skip
     kept = np.flatnonzero(second.good)

@@ -13,7 +13,7 @@ ROOT = Path(__file__).resolve().parents[1]
 LADDER = [
     "errors", "potential", "mixture", "grid", "closures", "transform", "oz", "stopping", "equations", "anderson",
     "iteration", "newton", "continuation", "thermodynamics", "root", "response", "solution", "sensitivity", "solver",
-    "interpolation", "job", "many", "reference",
+    "interpolation", "job", "many", "paths", "reference",
 ]  # fmt: skip
 ONLY_IN = {
     "pyfftw": ["ozsolve/transform.py"],

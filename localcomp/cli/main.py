@@ -11,7 +11,14 @@ from typing import Annotated, NoReturn
 import typer
 
 from localcomp import __version__
-from localcomp.cli import audit_command, calibrate_command, new_command, state_command, study_command
+from localcomp.cli import (
+    activity_command,
+    audit_command,
+    calibrate_command,
+    new_command,
+    state_command,
+    study_command,
+)
 from localcomp.errors import BadInput, LocalcompError, NoAnswer
 
 WRONG_INPUT = 2
@@ -44,6 +51,7 @@ def _root(
 
 app.command("new")(new_command.new)
 app.command("state")(state_command.state)
+app.command("activity")(activity_command.activity)
 app.command("calibrate")(calibrate_command.calibrate)
 app.command("check")(study_command.check)
 app.command("sweep")(study_command.sweep)
