@@ -15,6 +15,7 @@ from localcomp.cli import (
     activity_command,
     audit_command,
     calibrate_command,
+    fit_command,
     new_command,
     state_command,
     study_command,
@@ -57,6 +58,7 @@ app.command("check")(study_command.check)
 app.command("sweep")(study_command.sweep)
 app.command("table")(study_command.table)
 app.command("audit")(audit_command.audit)
+app.command("fit")(fit_command.fit)
 
 
 def run() -> None:

@@ -130,12 +130,12 @@ def _duration(seconds: float) -> str:
 class Bar:
     """Progress with rate and time left, on standard error."""
 
-    def __init__(self, total: int) -> None:
+    def __init__(self, total: int, what: str = "states") -> None:
         from rich.console import Console
         from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
 
         self._progress = Progress(
-            TextColumn("states"),
+            TextColumn(what),
             BarColumn(),
             MofNCompleteColumn(),
             TextColumn("{task.fields[rate]}"),
@@ -162,7 +162,7 @@ class Bar:
             self._first = present
         elapsed = time.monotonic() - self._began
         self._progress.update(
-            self._task, completed=present, rate=f"{max(present - self._first, 0) / max(elapsed, 1e-9):.0f}/s",
+            self._task, completed=present, total=total, rate=f"{max(present - self._first, 0) / max(elapsed, 1e-9):.0f}/s",
             failed=f"{failed} without solution" if failed else "",
         )  # fmt: skip
 

@@ -11,6 +11,7 @@ import pkgutil
 from localcomp.models.base import (
     LATTICE_COORDINATION,
     ActivityModel,
+    Adjustable,
     Claim,
     ModelInput,
     Reading,
@@ -60,6 +61,7 @@ __all__ = [
     "MODELS",
     "TABLE_MODELS",
     "ActivityModel",
+    "Adjustable",
     "Claim",
     "ModelInput",
     "Nrtl",

@@ -94,6 +94,8 @@ class ModelInput:
         Lattice coordination number.
     segment : float, optional
         Diameter of the segment that r and q are counted in; the smallest sphere unless given.
+    given_exchange : ndarray, shape (..., s, s), optional
+        D_ij outright, as a fit has them; need not come from any table of depths.
     """
 
     reduced_depth: Array
@@ -102,6 +104,7 @@ class ModelInput:
     pair_diameter: Array | None = None
     z: Array | float = LATTICE_COORDINATION
     segment: float | None = None
+    given_exchange: Array | None = None
 
     @classmethod
     def of(cls, mixture: Mixture, state: State, z: float = LATTICE_COORDINATION) -> ModelInput:
@@ -117,12 +120,16 @@ class ModelInput:
     @property
     def exchange(self) -> Array:
         """D_ij = beta (eps_ij - eps_ii), shape (..., s, s)."""
+        if self.given_exchange is not None:
+            return self.given_exchange
         own = np.diagonal(self.reduced_depth, axis1=-2, axis2=-1)
         return self.reduced_depth - own[..., :, None]
 
     @property
     def interchange(self) -> Array:
-        """w_ij = beta [eps_ij - (eps_ii + eps_jj)/2], shape (..., s, s)."""
+        """w_ij = beta [eps_ij - (eps_ii + eps_jj)/2] = (D_ij + D_ji)/2, shape (..., s, s)."""
+        if self.given_exchange is not None:
+            return np.asarray(0.5 * (self.given_exchange + np.swapaxes(self.given_exchange, -1, -2)))
         half = 0.5 * np.diagonal(self.reduced_depth, axis1=-2, axis2=-1)
         return self.reduced_depth - half[..., :, None] - half[..., None, :]
 
@@ -155,7 +162,20 @@ class ModelInput:
 
     def athermal(self) -> ModelInput:
         """The same mixture without wells."""
-        return replace(self, reduced_depth=np.zeros_like(self.reduced_depth))
+        given = self.given_exchange
+        return replace(
+            self,
+            reduced_depth=np.zeros_like(self.reduced_depth),
+            given_exchange=None if given is None else np.zeros_like(given),
+        )
+
+
+class Adjustable(Enum):
+    """What is regressed for a pair: two exchange energies, one interchange energy, or the unlike energy alone."""
+
+    EXCHANGE = ("D12", "D21")
+    INTERCHANGE = ("w12",)
+    UNLIKE = ("e12",)
 
 
 class ActivityModel(Protocol):
@@ -179,6 +199,11 @@ class ActivityModel(Protocol):
     @property
     def parameters(self) -> tuple[Parameter, ...]:
         """Its parameters with units."""
+        ...
+
+    @property
+    def adjustable(self) -> Adjustable:
+        """What is regressed for a pair."""
         ...
 
     @property

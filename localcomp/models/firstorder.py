@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import BOTH, COMPOSITION_DEPENDENT, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import BOTH, COMPOSITION_DEPENDENT, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import staverman_guggenheim
 
 
@@ -30,6 +30,7 @@ class FirstOrderQuasiChemical:
         Parameter("q_i", "1", "surface of a molecule in segments"),
         Parameter("z", "1", "lattice coordination number"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.INTERCHANGE
     readings: ClassVar[tuple[Reading, ...]] = BOTH
     claims: ClassVar[frozenset[Claim]] = COMPOSITION_DEPENDENT
 

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import BOTH, EVERY_CLAIM, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import BOTH, EVERY_CLAIM, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import staverman_guggenheim
 from localcomp.models.uniquac import surface_ratios, uniquac_residual
 
@@ -28,6 +28,7 @@ class LatticeSurface:
         Parameter("r_i, q_i", "1", "volume and surface of a molecule in segments"),
         Parameter("z", "1", "lattice coordination number"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.EXCHANGE
     readings: ClassVar[tuple[Reading, ...]] = BOTH
     claims: ClassVar[frozenset[Claim]] = EVERY_CLAIM
 

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import BOTH, EVERY_CLAIM, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import BOTH, EVERY_CLAIM, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 
 
 def nrtl_ln_gamma(mole_fractions: Array, tau: Array, alpha: Array | float) -> Array:
@@ -49,6 +49,7 @@ class Nrtl:
         Parameter("g_ij - g_jj", "J/mol or kT", "-m (eps_ij - eps_jj), two per pair"),
         Parameter("alpha_ij", "1", "nonrandomness, one per pair"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.EXCHANGE
     readings: ClassVar[tuple[Reading, ...]] = BOTH
     claims: ClassVar[frozenset[Claim]] = EVERY_CLAIM
 

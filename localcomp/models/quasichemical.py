@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import BOTH, COMPOSITION_DEPENDENT, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import BOTH, COMPOSITION_DEPENDENT, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import staverman_guggenheim
 
 MAX_STEPS = 200
@@ -38,6 +38,7 @@ class QuasiChemical:
         Parameter("q_i", "1", "surface of a molecule in segments"),
         Parameter("z", "1", "lattice coordination number"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.INTERCHANGE
     readings: ClassVar[tuple[Reading, ...]] = BOTH
     claims: ClassVar[frozenset[Claim]] = COMPOSITION_DEPENDENT
 

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import EVERY_CLAIM, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import EVERY_CLAIM, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import flory_huggins, staverman_guggenheim
 
 
@@ -42,6 +42,11 @@ class RandomMixing:
     def label(self) -> str:
         """Name with its fractions."""
         return f"random mixing by {self.by}"
+
+    @property
+    def adjustable(self) -> Adjustable:
+        """The unlike energy in van der Waals' one fluid, which needs the pure energies too."""
+        return Adjustable.UNLIKE if self.by == "pair volume" else Adjustable.INTERCHANGE
 
     @property
     def year(self) -> int:

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import EVERY_CLAIM, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import EVERY_CLAIM, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import staverman_guggenheim
 from localcomp.models.twoliquid import local_logarithm
 
@@ -46,6 +46,7 @@ class Uniquac:
         Parameter("r_i, q_i", "1", "volume and surface of a molecule in segments"),
         Parameter("z", "1", "lattice coordination number, in the combinatorial part"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.EXCHANGE
     readings: ClassVar[tuple[Reading, ...]] = (Reading.ALL_CONTACTS, Reading.ONE_CONTACT)
     claims: ClassVar[frozenset[Claim]] = EVERY_CLAIM
 

@@ -7,7 +7,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from localcomp.models.base import BOTH, EVERY_CLAIM, Array, Claim, ModelInput, Parameter, Reading
+from localcomp.models.base import BOTH, EVERY_CLAIM, Adjustable, Array, Claim, ModelInput, Parameter, Reading
 from localcomp.models.combinatorial import flory_huggins
 from localcomp.models.twoliquid import local_logarithm
 
@@ -40,6 +40,7 @@ class Wilson:
         Parameter("lambda_ij - lambda_ii", "J/mol or kT", "-m (eps_ij - eps_ii), two per pair"),
         Parameter("v_i", "cm3/mol or sigma^3", "molar volume"),
     )
+    adjustable: ClassVar[Adjustable] = Adjustable.EXCHANGE
     readings: ClassVar[tuple[Reading, ...]] = BOTH
     claims: ClassVar[frozenset[Claim]] = EVERY_CLAIM
 
