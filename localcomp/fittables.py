@@ -39,7 +39,7 @@ def _head(pair: PairResult, labels: list[str]) -> list[str]:
 
 def fits_csv(report: FitReport) -> str:
     """One row per pair, packing fraction and model; ln gamma is dimensionless."""
-    labels, energy = _labels(report), report.study.units.temperature_label
+    labels, energy = _labels(report), "K" if report.study.units.real else "energy unit"
     header = [
         *labels, "packing_fraction", "model", "parameter_1", f"value_1 ({energy})", f"standard_error_1 ({energy})",
         "multiplicity_1", "parameter_2", f"value_2 ({energy})", f"standard_error_2 ({energy})", "multiplicity_2",

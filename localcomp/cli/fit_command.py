@@ -90,7 +90,9 @@ def _write(out: Path, report: FitReport, body: dict) -> list[str]:  # type: igno
         "fits": fit_figure(curves.fit_panels(pair), f"ln gamma, {heading}", (names[0], names[1])),
         "implied_ratios": ratio_parity(curves.ratio_clouds(report), BAD_RATIO, f"{report.study.name}: neighbours"),
         "fitted_energies": energy_figure(
-            curves.energy_clouds(report), f"{report.study.name}: energies", units.temperature_label
+            curves.energy_clouds(report),
+            f"{report.study.name}: energies of unlike against like contacts",
+            "K" if units.real else "energy unit",
         ),
     }
     for name, figure in figures.items():

@@ -37,9 +37,8 @@ def print_fits(report: FitReport) -> None:
         style="dim",
     )
     kinds = ("right for the right reason", "right for the wrong reason", "does not fit")
-    made = table(
-        "\nPairs by what the fit implies", "model", "right reason", "wrong reason", "no fit", "worst ln R error"
-    )
+    heads = ("model", "right reason", "wrong reason", "no fit", "worst ln R error")
+    made = table("\nPairs by what the fit implies", *heads)
     for entry in entries:
         made.add_row(entry["model"], *(str(entry["verdicts"].get(kind, 0)) for kind in kinds),
                      _number(entry["largest_ratio_error"]))  # fmt: skip

@@ -162,7 +162,8 @@ class Bar:
             self._first = present
         elapsed = time.monotonic() - self._began
         self._progress.update(
-            self._task, completed=present, total=total, rate=f"{max(present - self._first, 0) / max(elapsed, 1e-9):.0f}/s",
+            self._task, completed=present, total=total,
+            rate=f"{max(present - self._first, 0) / max(elapsed, 1e-9):.0f}/s",
             failed=f"{failed} without solution" if failed else "",
         )  # fmt: skip
 

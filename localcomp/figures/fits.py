@@ -7,14 +7,14 @@ from dataclasses import dataclass
 
 import numpy as np
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
 from numpy.typing import NDArray
 
-from localcomp.figures.ratios import called
+from localcomp.figures.ratios import called, plain_log
 from localcomp.figures.style import DASHES, GRID, INK, LINES, look
 
 Array = NDArray[np.float64]
 
-MARKS = "os^vDP*X<>hd"
 NOTE = "spheres with square wells; verify against measured phase equilibria"
 
 
@@ -51,7 +51,7 @@ def fit_figure(panels: Sequence[FitPanel], heading: str, names: tuple[str, str])
         true = true[np.isfinite(true)]
         span = max(float(np.ptp(true)), 0.05) if true.size else 1.0
         low, high = (float(true.min()), float(true.max())) if true.size else (0.0, 1.0)
-        handles = []
+        handles: list[Line2D] = []
         for axis, panel in zip(axes, panels, strict=False):
             handles = []
             axis.axhline(0.0, color=GRID, lw=0.8, zorder=0)
@@ -112,8 +112,7 @@ def ratio_parity(clouds: Sequence[Cloud], limit: float, heading: str) -> Figure:
             axis.set_ylim(0.5 * low, 2.0 * high)
             axis.set_title(cloud.label)
             for which in (axis.xaxis, axis.yaxis):
-                which.set_major_formatter(lambda v, _: f"{v:g}")
-                which.set_minor_formatter(lambda v, _: "")
+                plain_log(which, 4)
         for n, axis in enumerate(axes):
             if n >= len(clouds):
                 axis.set_visible(False)
@@ -122,34 +121,44 @@ def ratio_parity(clouds: Sequence[Cloud], limit: float, heading: str) -> Figure:
                 axis.tick_params(labelbottom=True)
             if n % columns == 0:
                 axis.set_ylabel("R implied by the fit")
-        figure.suptitle(f"{heading}\ngrey: within {100 * (np.exp(limit) - 1.0):.0f} %; points beyond the frame at its edge",
-                        fontsize=10)  # fmt: skip
+        band = 100 * (np.exp(limit) - 1.0)
+        figure.suptitle(f"{heading}\ngrey: within {band:.0f} %; points beyond the frame at its edge", fontsize=10)
     return figure
 
 
 def energy_figure(clouds: Sequence[Cloud], heading: str, unit: str) -> Figure:
-    """Fitted energies against those of one contact."""
+    """Fitted energies against those of one contact, one panel per model."""
+    columns = min(4, len(clouds))
+    rows = -(-len(clouds) // columns)
     with look():
-        figure = Figure(figsize=(7.4, 4.8), layout="constrained")
-        axis = figure.subplots()
-        x = np.concatenate([c.x for c in clouds])
-        x = x[np.isfinite(x)]
-        reach = 1.1 * float(np.max(np.abs(x), initial=0.1))
+        figure = Figure(figsize=(max(2.5 * columns, 6.0), 2.3 * rows + 1.1), layout="constrained")
+        axes = figure.subplots(rows, columns, squeeze=False, sharex=True, sharey=True).ravel()
+        x, y = (np.concatenate([getattr(c, name) for c in clouds]) for name in "xy")
+        reach = 1.1 * float(np.max(np.abs(x[np.isfinite(x)]), initial=0.1))
+        height = 1.15 * float(np.max(np.abs(y[np.isfinite(y)]), initial=reach))
         line = np.array([-reach, reach])
-        axis.plot(line, line, color=INK, lw=0.9, label="one contact (m = 1)")
-        axis.plot(line, 5.0 * line, color=INK, lw=0.9, ls=":", label="five contacts (m = z/2, z = 10)")
-        for n, cloud in enumerate(clouds):
-            axis.plot(cloud.x, cloud.y, ls="", marker=MARKS[n % len(MARKS)], ms=4.5, mew=0, alpha=0.75,
-                      color=LINES[n % len(LINES)], label=cloud.label)  # fmt: skip
-        axis.axhline(0.0, color=GRID, lw=0.8, zorder=0)
-        axis.axvline(0.0, color=GRID, lw=0.8, zorder=0)
-        axis.set_xlim(-reach, reach)
-        y = np.concatenate([c.y for c in clouds])
-        y = y[np.isfinite(y)]
-        height = 1.15 * float(np.max(np.abs(y), initial=reach))
-        axis.set_ylim(-height, height)
-        axis.set_xlabel(f"true energy of one contact, {unit}")
-        axis.set_ylabel(f"fitted energy, {unit}")
-        axis.set_title(heading, fontsize=10, loc="left")
-        figure.legend(*axis.get_legend_handles_labels(), loc="outside right upper")
+        handles: list[Line2D] = []
+        for axis, cloud in zip(axes, clouds, strict=False):
+            handles = [
+                *axis.plot(
+                    cloud.x, cloud.y, ls="", marker="o", ms=3.4, mew=0, alpha=0.7, color=LINES[0], label="pairs"
+                ),
+                *axis.plot(line, line, color=INK, lw=0.9, label="one contact (m = 1)"),
+                *axis.plot(line, 5.0 * line, color=INK, lw=0.9, ls=":", label="five contacts (m = z/2, z = 10)"),
+            ]
+            axis.axhline(0.0, color=GRID, lw=0.8, zorder=0)
+            axis.axvline(0.0, color=GRID, lw=0.8, zorder=0)
+            axis.set_xlim(-reach, reach)
+            axis.set_ylim(-height, height)
+            axis.set_title(cloud.label)
+        for n, axis in enumerate(axes):
+            if n >= len(clouds):
+                axis.set_visible(False)
+            elif n + columns >= len(clouds):
+                axis.set_xlabel(f"true, {unit}")
+                axis.tick_params(labelbottom=True)
+            if n % columns == 0:
+                axis.set_ylabel(f"fitted, {unit}")
+        figure.legend(handles, [str(h.get_label()) for h in handles], loc="outside lower center", ncols=3)
+        figure.suptitle(heading, fontsize=10)
     return figure

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.axis import XAxis, YAxis
 from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, NullFormatter
 from numpy.typing import NDArray
@@ -106,19 +107,24 @@ def _ratio_panel(axis: Axes, panel: RatioPanel, low: float, high: float) -> list
     axis.set_yscale("log")
     axis.set_ylim(low, high)
     axis.set_xlim(-0.03, 1.03)
-    _plain_log(axis)
+    plain_log(axis.yaxis)
     return [bars, *handles]
 
 
-def _plain_log(axis: Axes) -> None:
+def plain_log(axis: XAxis | YAxis, most: int = 8) -> None:
     """Plain numbers on a logarithmic axis that spans less than two decades."""
-    low, high = axis.get_ylim()
-    choices = np.array([0.1, 0.2, 0.3, 0.5, 0.7, 1.0, 1.5, 2.0, 3.0, 5.0, 7.0, 10.0, 20.0, 50.0])
-    ticks = choices[(choices >= low) & (choices <= high)]
+    low, high = axis.get_view_interval()
+    for choices in (TICKS, TICKS[::2], (0.1, 0.3, 1.0, 3.0, 10.0)):
+        ticks = [tick for tick in choices if low <= tick <= high]
+        if len(ticks) <= most:
+            break
     if len(ticks) >= 2:
-        axis.set_yticks(ticks)
-        axis.yaxis.set_major_formatter(FuncFormatter(lambda v, _: f"{v:g}"))
-        axis.yaxis.set_minor_formatter(NullFormatter())
+        axis.set_ticks(ticks)
+        axis.set_major_formatter(FuncFormatter(lambda v, _: f"{v:g}"))
+        axis.set_minor_formatter(NullFormatter())
+
+
+TICKS = (0.1, 0.2, 0.3, 0.5, 0.7, 1.0, 1.5, 2.0, 3.0, 5.0, 7.0, 10.0, 20.0, 50.0)
 
 
 @dataclass(frozen=True)
@@ -194,7 +200,7 @@ def reciprocity_figure(
         values = values[np.isfinite(values)]
         low, high = (float(values.min()), float(values.max())) if values.size else (1.0, 1.0)
         axis.set_ylim(min(low / 1.15, 0.8), max(high * 1.15, 1.25))
-        _plain_log(axis)
+        plain_log(axis.yaxis)
         axis.set_xlim(-0.03, 1.03)
         axis.set_xlabel(f"mole fraction of {called(species)}")
         i, j = pair
