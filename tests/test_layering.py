@@ -36,7 +36,7 @@ ALONE = {"reference": ["ozsolve.errors"]}
 def imports(source: str, package: str) -> list[tuple[str, list[str]]]:
     """(module, names) of every import, relative ones and `from package import module` spelled out. What only
     type checkers see is left out."""
-    found = []
+    found: list[tuple[str, list[str]]] = []
     tree = ast.parse(source)
     typing_only = {
         id(inner)

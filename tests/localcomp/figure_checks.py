@@ -19,7 +19,7 @@ def drawn(figure: Figure) -> tuple[RendererAgg, list[Text]]:
     shown: list[Text] = []
 
     class Spy(RendererAgg):
-        def draw_text(self, gc, x, y, s, prop, angle, ismath=False, mtext=None):  # type: ignore[no-untyped-def]
+        def draw_text(self, gc, x, y, s, prop, angle, ismath=False, mtext=None):
             if mtext is not None:
                 shown.append(mtext)
             super().draw_text(gc, x, y, s, prop, angle, ismath, mtext)

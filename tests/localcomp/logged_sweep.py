@@ -25,7 +25,7 @@ def logged(log: str, unit: Unit) -> list[Row]:
 def main(study: str, out: str, log: str) -> None:
     """Sweep as the command does."""
     Path(out).mkdir(exist_ok=True)
-    localcomp.sweep.work = functools.partial(logged, log)  # type: ignore[assignment]
+    localcomp.sweep.work = functools.partial(logged, log)
     with Store(Path(out) / "states.sqlite") as store, pool(2) as executor:
         run(read_study(study), store, executor, 2)
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from typing import Any
 
 import numpy as np
 import pytest
@@ -19,7 +20,7 @@ from tests.readers import numbers, read
 TENTHS = np.stack((np.arange(11) / 10, 1.0 - np.arange(11) / 10), axis=1)
 
 
-def isotherm(mixture: Mixture, temperature: float, eta: float, x: object = TENTHS, **options: object) -> Activity:
+def isotherm(mixture: Mixture, temperature: float, eta: float, x: Any = TENTHS, **options: Any) -> Activity:
     return activity_at_packing(mixture, temperature, eta, x, **options)[0]
 
 
@@ -53,8 +54,8 @@ def test_hard_sphere_potentials_are_derivatives(scale: float) -> None:
         slope = (bmcsl_helmholtz(up, diameter) * up.sum() - bmcsl_helmholtz(down, diameter) * down.sum()) / (2 * step)
         assert mu[i] == pytest.approx(slope, rel=1e-8)
         assert abs(mu[i] / slope - 1.001) > 1e-8
-    up, down = (bmcsl_helmholtz(rho * (1 + s), diameter) for s in (1e-5, -1e-5))
-    assert bmcsl_compressibility_factor(rho, diameter) == pytest.approx(1.0 + (up - down) / 2e-5, rel=1e-8)
+    denser, thinner = (bmcsl_helmholtz(rho * (1 + s), diameter) for s in (1e-5, -1e-5))
+    assert bmcsl_compressibility_factor(rho, diameter) == pytest.approx(1.0 + (denser - thinner) / 2e-5, rel=1e-8)
 
 
 def test_a_hard_sphere_mixture_is_flory_huggins_and_hard_spheres() -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -50,7 +51,7 @@ def test_a_calibrated_sphere_has_the_measured_energy_and_pressure(closure, write
 
 def test_the_json_says_what_was_reached_and_in_which_unit():
     liquid = read_liquid(STUDIES / "krypton.toml")
-    body = calibration_json(calibrate(liquid))
+    body: dict[str, Any] = calibration_json(calibrate(liquid))
     conditions = body["conditions"]
     assert isinstance(conditions, dict)
     for name, measured in (("residual_energy", -8202.0), ("pressure", 73.565)):

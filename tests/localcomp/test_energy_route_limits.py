@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import replace
+from typing import Any, cast
 
 import numpy as np
 import pytest
@@ -58,7 +59,7 @@ def test_slopes_are_the_energy_and_the_pressure(closure):
     mixture, state = Mixture([1.0, 1.3], [1.0, 1.4], k=0.05), State(2.0, (0.4, 0.6), packing_fraction=0.38)
 
     def helmholtz(**changes: float) -> float:
-        return energy_route(mixture, replace(state, **changes), closure, 1e-7).helmholtz_attraction
+        return energy_route(mixture, replace(state, **cast(Any, changes)), closure, 1e-7).helmholtz_attraction
 
     step = 2e-3
     by_beta = (helmholtz(temperature=2.0 / (1 + step)) - helmholtz(temperature=2.0 / (1 - step))) / (2 * step)

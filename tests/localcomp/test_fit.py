@@ -123,11 +123,11 @@ TASK = PairTask(
 
 
 @pytest.fixture(scope="module")
-def result():  # type: ignore[no-untyped-def]
+def result():
     return examine_pair(TASK)
 
 
-def test_right_for_the_wrong_reason(result) -> None:  # type: ignore[no-untyped-def]
+def test_right_for_the_wrong_reason(result) -> None:
     """Equal sizes: the quasi-chemical theory has the neighbours; Wilson and UNIQUAC fit as well and have them wrong."""
     assert result.reason == ""
     tests = {t.regression.model.name: t for t in result.tests}
@@ -139,7 +139,7 @@ def test_right_for_the_wrong_reason(result) -> None:  # type: ignore[no-untyped-
     assert tests["random-mole"].multiplicity[0] == pytest.approx(5.5, abs=1.0)
 
 
-def test_what_is_compared_is_the_truth(result) -> None:  # type: ignore[no-untyped-def]
+def test_what_is_compared_is_the_truth(result) -> None:
     n = 3
     x, t = result.x[n], result.temperature[n]
     state = State(t, (x, 1.0 - x), packing_fraction=0.40)
@@ -159,7 +159,7 @@ def test_what_is_compared_is_the_truth(result) -> None:  # type: ignore[no-untyp
     assert test.dilution.largest == pytest.approx(max(dilute), rel=1e-9)
 
 
-def test_unfitted_is_the_model_with_the_true_energies(result) -> None:  # type: ignore[no-untyped-def]
+def test_unfitted_is_the_model_with_the_true_energies(result) -> None:
     test = next(u for u in result.tests if u.regression.model.name == "uniquac")
     rows = np.column_stack([result.x, 1.0 - result.x])
     off = []
@@ -169,7 +169,7 @@ def test_unfitted_is_the_model_with_the_true_energies(result) -> None:  # type: 
     assert test.unfitted[Reading.ALL_CONTACTS].rms == pytest.approx(float(np.sqrt(np.mean(np.square(off)))), rel=1e-9)
 
 
-def test_figures_of_fits(result) -> None:  # type: ignore[no-untyped-def]
+def test_figures_of_fits(result) -> None:
     report = FitReport(None, (result,), (), "")  # type: ignore[arg-type]  # the figures need no study
     figures = [
         fit_figure(fit_panels(result), f"ln gamma, {pair_heading(result, ' K')}", ("1", "2")),

@@ -69,7 +69,7 @@ def damaged_values(content: dict[str, Any], chance: random.Random) -> dict[str, 
             keys = list(holder) if isinstance(holder, dict) else list(range(len(holder)))
             if not keys:
                 break
-            key = chance.choice(keys)
+            key: Any = chance.choice(keys)
             inner = holder[key]
             if isinstance(inner, dict | list) and inner and chance.random() < 0.8:
                 holder = inner

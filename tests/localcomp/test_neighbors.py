@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from types import SimpleNamespace
+from typing import cast
 
 import numpy as np
 import pytest
@@ -13,7 +14,7 @@ from localcomp.models.base import BOTH
 from localcomp.models.quasichemical import contact_factors
 from localcomp.neighbors import count_neighbors, shell_sensitivity
 from localcomp.shells import FirstMinimum, FixedMultiple, WellEdge
-from ozsolve import CLOSURES, Mixture, State, solve
+from ozsolve import CLOSURES, Mixture, Solution, State, solve
 from tests.problems import PROBLEMS
 from tests.readers import numbers, read
 
@@ -98,7 +99,7 @@ def test_a_shell_that_does_not_exist_is_said_so() -> None:
         g_segments=lambda *, rough: (r, (1.0 + np.exp(-r))[None, None], (1.0 + np.exp(-r))[None, None]),
     )
     with pytest.raises(NoAnswer, match="no minimum"):
-        FirstMinimum().radius(falling)
+        FirstMinimum().radius(cast(Solution, falling))
 
 
 def test_sensitivity_is_the_spread_over_rules() -> None:

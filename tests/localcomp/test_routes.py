@@ -41,6 +41,7 @@ def test_pressure_is_the_density_derivative_of_the_helmholtz_energy(name: str) -
     mixture, state = PROBLEMS[name]
     route = energy_route(mixture, state, "rhnc", 1e-7)
     step, ends = 1e-3, []
+    assert state.packing_fraction is not None
     for sign in (1.0, -1.0):
         denser = replace(state, packing_fraction=state.packing_fraction * (1 + sign * step))
         ends.append(energy_route(mixture, denser, "rhnc", 1e-7).helmholtz_attraction)

@@ -84,6 +84,7 @@ def test_sum_over_all_k_gives_gamma_at_the_origin(name: str) -> None:
     solution = solve(mixture, state, accuracy=1e-6)
     sums = []
     for level in (solution.coarse, solution.fine):
+        assert level is not None
         equations, grid = level.equations, level.grid
         gamma_r = equations.gamma(level.x)[0]
         gamma_k = indirect(equations.direct_k(level.x), equations.root_rho)[0][0] * grid.filter

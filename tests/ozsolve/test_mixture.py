@@ -97,7 +97,7 @@ def test_solve_refuses_what_it_does_not_know() -> None:
 def test_mixtures_are_immutable_and_travel() -> None:
     mixture = Mixture([1.0, 1.5], [1.0, 1.0], k=0.1, names=["a", "b"])
     with pytest.raises(AttributeError):
-        mixture.names = ("x", "y")  # type: ignore[misc]
+        mixture.names = ("x", "y")
     with pytest.raises(ValueError, match="read-only"):
         mixture.pairs.diameter[0, 0] = 2.0
     copy = pickle.loads(pickle.dumps(mixture))

@@ -277,7 +277,9 @@ def test_scattered_interpolation_goes_through_its_points_and_between_them() -> N
     for p in points:
         scatter.add(p, np.array([np.sin(p.sum()), p[0] * p[1]]))
     for p in rng.uniform(0.3, 0.9, (10, 3)):
-        assert np.max(np.abs(scatter.at(p) - [np.sin(p.sum()), p[0] * p[1]])) < 1e-2
+        found = scatter.at(p)
+        assert found is not None
+        assert np.max(np.abs(found - [np.sin(p.sum()), p[0] * p[1]])) < 1e-2
 
 
 def test_spread_order_covers_early() -> None:

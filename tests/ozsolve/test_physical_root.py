@@ -134,6 +134,7 @@ def test_work_is_bounded_and_the_end_has_a_name() -> None:
         failed = solve(Mixture(1.0, 1.0), State(0.6, packing_fraction=0.15), closure=closure, on_failure="return")
         assert failed.status in (Status.UNSTABLE_FLUID, Status.BRANCH_END)
         assert failed.stats.steps < 20_000
+        assert failed.branch_end_temperature is not None
         assert 0.6 < failed.branch_end_temperature < 3.0
         assert failed.status.sentence in failed.message
 
