@@ -62,7 +62,7 @@ def plain(solution: Solution, closure: str) -> PlainResult:
     for i, j in np.ndindex(species, species):
         whole = CubicSpline(np.append(0.0, solution.r), np.append(0.0, solution.r * solution.gamma_r[i, j]))
         gamma_r[i, j] = np.where(r <= solution.r[-1], whole(r), 0.0) / r
-        core, edge = step(r, pairs.diameter[i, j]), step(r, float(pairs.well_edge[i, j]))
+        core, edge = step(r, float(pairs.diameter[i, j])), step(r, float(pairs.well_edge[i, j]))
         inside = CLOSURES[closure](gamma_r[i, j], attraction[i, j])
         g_r[i, j] = (edge - core) * inside + (1.0 - edge) * CLOSURES[closure](gamma_r[i, j], 0.0)
     c_r = g_r - 1.0 - gamma_r
