@@ -151,6 +151,8 @@ def test_one_component_distribution(row: dict[str, float]) -> None:
     for key, value in row.items():
         if key.startswith("g") and key[1:].replace(".", "").isdigit():
             assert float(spline(float(key[1:]))) == pytest.approx(value, abs=2e-5), key
+    denser = solve(Mixture(1.0, 0.0), State(1.0, packing_fraction=1.001 * row["eta"]), closure="py", accuracy=1e-7)
+    assert denser.contact_values[0, 0] != pytest.approx(row["g_contact"], rel=1e-6), "0.1 % of density must show"
 
 
 @pytest.mark.parametrize("row", COORDINATION, ids=lambda r: str(r["rho"]))
@@ -160,3 +162,6 @@ def test_one_component_coordination(row: dict[str, float]) -> None:
         solution = solve(Mixture(1.0, 0.0, reach), State(1.0, density=row["rho"]), closure="py")
         found = row["rho"] * solution.observables.shell_integral[0, 0]
         assert found == pytest.approx(row[f"n_{reach}"], abs=2e-5 * max(1.0, row[f"n_{reach}"]))
+        wider = solve(Mixture(1.0, 0.0, 1.001 * reach), State(1.0, density=row["rho"]), closure="py")
+        count = row["rho"] * wider.observables.shell_integral[0, 0]
+        assert count != pytest.approx(row[f"n_{reach}"], abs=2e-5 * max(1.0, row[f"n_{reach}"]))

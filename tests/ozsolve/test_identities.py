@@ -55,7 +55,9 @@ def test_c_zero_is_the_derivative_of_the_pressure(row: dict[str, float]) -> None
         step = np.zeros(2)
         step[i] = 1e-5 * rho.sum()
         pressures = [exact.py_compressibility_pressure(rho + sign * step, sigma) for sign in (1.0, -1.0)]
-        assert found[i] == pytest.approx((pressures[0] - pressures[1]) / (2e-5 * rho.sum()), rel=1e-5)
+        slope = (pressures[0] - pressures[1]) / (2e-5 * rho.sum())
+        assert found[i] == pytest.approx(slope, rel=1e-5)
+        assert 2.0 - found[i] != pytest.approx(slope, rel=1e-5), "the sign of c must show"
 
 
 @pytest.mark.parametrize("name", list(PROBLEMS))
@@ -67,6 +69,8 @@ def test_structure_factors_invert_i_minus_c(name: str) -> None:
     c_k = np.moveaxis(solution.c_k, -1, 0)
     product = (np.eye(len(root)) - root[:, None] * root * c_k) @ np.moveaxis(solution.structure_factors, -1, 0)
     assert np.max(np.abs(product - np.eye(len(root)))) < 1e-10
+    wrong = (np.eye(len(root)) + root[:, None] * root * c_k) @ np.moveaxis(solution.structure_factors, -1, 0)
+    assert np.max(np.abs(wrong - np.eye(len(root)))) > 1e-2, "the sign of c must show"
     g_zero = solution.kirkwood_buff
     expected = np.eye(len(root)) + root[:, None] * root * g_zero
     k, beginning = solution.k[:6], solution.structure_factors[:, :, :6].reshape(-1, 6)
@@ -153,3 +157,5 @@ def test_energy_is_the_sum_over_neighbour_counts(closure: str) -> None:
     counts = solution.densities * solution.observables.shell_integral
     x = np.array(state.mole_fractions)
     assert solution.internal_energy == pytest.approx(-0.5 * np.sum(x[:, None] * counts * mixture.pairs.well_depth))
+    turned = -0.5 * np.sum(x[:, None] * counts * mixture.pairs.well_depth[::-1, ::-1])
+    assert solution.internal_energy != pytest.approx(turned), "swapped wells must show"
