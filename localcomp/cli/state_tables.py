@@ -29,7 +29,7 @@ def with_error(value: float, bar: float) -> str:
     """A number with its error bar in its last digit: 2.97839(2) is 2.97839 +- 0.00002."""
     if not bar > 0.0:
         return f"{value:.6g}"
-    if 0.0 < abs(value) < SMALL and bar < SMALL:
+    if bar < abs(value) < SMALL:
         power = math.floor(math.log10(abs(value)))
         return f"{with_error(value / 10.0**power, bar / 10.0**power)}e{power:+03d}"
     if bar < 10.0**-MOST_DIGITS:
@@ -37,6 +37,7 @@ def with_error(value: float, bar: float) -> str:
     digits = 0
     while digits < MOST_DIGITS and bar * 10**digits < 0.95:
         digits += 1
+    value = round(value, digits) + 0.0  # no minus before a zero
     return f"{value:.{digits}f}({max(math.ceil(bar * 10**digits - 0.05), 1)})"
 
 

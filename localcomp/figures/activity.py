@@ -79,7 +79,7 @@ def _binary(axis: Axes, panel: PanelData) -> None:
         axis.plot(series.line_x, series.line, color=color, lw=1.8, label=f"{name}, energy route")
         axis.plot(series.x, series.ln_gamma, "o", ms=3.2, color=color)
     axis.set_xlim(0.0, 1.0)
-    axis.set_xlabel(f"x({short(panel.names[0])})")
+    axis.set_xlabel(f"mole fraction of {short(panel.names[0])}")
     axis.set_ylabel("ln gamma")
     axis.legend(loc="upper left", bbox_to_anchor=(0.0, -0.16), ncols=2, borderaxespad=0.0)
 

@@ -112,6 +112,8 @@ def test_a_liquid_under_tension_is_warned_of(write):
         (1.0, 1e-18, "1"),
         (2.5e-12, 3e-17, "2.50000(3)e-12"),
         (-2.5e-12, 3e-14, "-2.50(3)e-12"),
+        (-4e-16, 4.0e-6, "0.000000(4)"),
+        (3e-7, 4.0e-6, "0.000000(4)"),
     ],
 )
 def test_error_bars_stand_in_the_last_digit(value, bar, shown):
