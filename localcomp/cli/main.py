@@ -15,6 +15,7 @@ from localcomp.cli import (
     activity_command,
     audit_command,
     calibrate_command,
+    components_command,
     fit_command,
     new_command,
     state_command,
@@ -53,6 +54,7 @@ def _root(
 app.command("new")(new_command.new)
 app.command("state")(state_command.state)
 app.command("activity")(activity_command.activity)
+app.command("components")(components_command.components)
 app.command("calibrate")(calibrate_command.calibrate)
 app.command("check")(study_command.check)
 app.command("sweep")(study_command.sweep)
