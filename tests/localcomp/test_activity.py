@@ -306,7 +306,7 @@ def test_a_path_through_the_two_phase_region_is_reported() -> None:
     mixture = Mixture([1.0, 1.0], [1.0, 1.0], k=0.4)
     island = solve(mixture, State(1.2, (0.5, 0.5), packing_fraction=0.4))
     assert island.status.usable
-    found = isotherm(mixture, 1.2, 0.40, [[0.0, 1.0], [0.02, 0.98], [0.1, 0.9], [0.5, 0.5]])
+    found = isotherm(mixture, 1.2, 0.40, [[0.0, 1.0], [0.02, 0.98], [0.1, 0.9], [0.5, 0.5]], accuracy=1e-3)
     assert found.available.tolist() == [True, True, False, False]
     assert "no solution" in found.reasons[2]
     assert "two-phase" in found.reasons[3]
@@ -317,7 +317,7 @@ def test_a_path_through_the_two_phase_region_is_reported() -> None:
 
 def test_a_pure_liquid_without_solution_is_no_answer() -> None:
     with pytest.raises(NoAnswer, match="pure"):
-        isotherm(Mixture([1.0, 1.0], [1.0, 4.0]), 1.1, 0.2)
+        isotherm(Mixture([1.0, 1.0], [1.0, 4.0]), 1.1, 0.2, accuracy=1e-3)
 
 
 def test_only_additive_diameters() -> None:
