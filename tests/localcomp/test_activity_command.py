@@ -111,7 +111,9 @@ def test_infinite_dilution_leaves_the_others_in_proportion() -> None:
 
 
 def test_splitting_is_a_warning(write: Callable[..., Path]) -> None:
-    text = NO_SOLUTION.replace("k = 0.2", "k = 0.4").replace("temperature = 1.0", "temperature = 1.2")
+    text = "[numerics]\naccuracy = 1e-3\n" + NO_SOLUTION.replace("k = 0.2", "k = 0.4").replace(
+        "temperature = 1.0", "temperature = 1.2"
+    )
     report = report_isotherm(request(write(text.replace('"py"', '"rhnc"')))[0])
     body = as_json(report)
     assert body["status"] == "partly_available"
