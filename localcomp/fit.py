@@ -61,8 +61,9 @@ def pair_matrix(model: ActivityModel, values: Array) -> Array:
 
 
 def fitted_input(
-    model: ActivityModel, mixture: Mixture, energies: Array, temperatures: Array, mole_fractions: Array, z: float
-) -> ModelInput:
+    model: ActivityModel, mixture: Mixture, energies: Array, temperatures: Array, mole_fractions: Array, z: float,
+    segment: float | None = None,
+) -> ModelInput:  # fmt: skip
     """What a model is told when its energies are fitted ones.
 
     Parameters
@@ -71,6 +72,8 @@ def fitted_input(
         Off the diagonal as `pair_matrix` has them.
     temperatures : ndarray, shape (n,)
     mole_fractions : ndarray, shape (n, s)
+    segment : float, optional
+        As in `ModelInput`; binaries whose energies go into a ternary need one in common, as r and q scale with it.
     """
     count = len(temperatures)
     warmth = temperatures[:, None, None]
@@ -84,16 +87,17 @@ def fitted_input(
         mole_fractions,
         np.broadcast_to(mixture.pairs.diameter, (count, size, size)),
         np.full(count, z),
-        None,
+        segment,
         None if model.adjustable is Adjustable.UNLIKE else exchange,
     )
 
 
 def fitted_ln_gamma(
-    model: ActivityModel, mixture: Mixture, energies: Array, temperatures: Array, mole_fractions: Array, z: float
-) -> Array:
+    model: ActivityModel, mixture: Mixture, energies: Array, temperatures: Array, mole_fractions: Array, z: float,
+    segment: float | None = None,
+) -> Array:  # fmt: skip
     """ln gamma_i of a model with fitted energies, shape (n, s)."""
-    given = fitted_input(model, mixture, energies, temperatures, mole_fractions, z)
+    given = fitted_input(model, mixture, energies, temperatures, mole_fractions, z, segment)
     return ln_gamma(model, given, reading_of(model))
 
 
@@ -108,8 +112,9 @@ def true_values(model: ActivityModel, mixture: Mixture) -> Array:
 
 
 def regress(
-    model: ActivityModel, mixture: Mixture, temperatures: Array, mole_fractions: Array, target: Array, z: float
-) -> Regression:
+    model: ActivityModel, mixture: Mixture, temperatures: Array, mole_fractions: Array, target: Array, z: float,
+    segment: float | None = None,
+) -> Regression:  # fmt: skip
     """Fit a model's energies to ln gamma of a pair.
 
     Parameters
@@ -118,6 +123,8 @@ def regress(
     mole_fractions : ndarray, shape (n, 2)
     target : ndarray, shape (n, 2)
         ln gamma_i; NaN is left out.
+    segment : float, optional
+        As in `fitted_input`.
 
     Raises
     ------
@@ -137,7 +144,8 @@ def regress(
     scale = max(float(np.abs(mixture.pairs.well_depth).max()), 1e-12)
 
     def residuals(values: Array) -> Array:
-        found = fitted_ln_gamma(model, mixture, pair_matrix(model, values), temperatures, mole_fractions, z)
+        energies = pair_matrix(model, values)
+        found = fitted_ln_gamma(model, mixture, energies, temperatures, mole_fractions, z, segment)
         return np.asarray(np.nan_to_num(found[known] - target[known], nan=1e3, posinf=1e3, neginf=-1e3))
 
     fits = []

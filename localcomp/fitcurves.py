@@ -75,13 +75,14 @@ def ratio_clouds(report: FitReport) -> list[Cloud]:
 
 
 def energy_clouds(report: FitReport) -> list[Cloud]:
-    """True and fitted energies of every model with exchange or interchange energies."""
+    """True and fitted energies of every model: exchange or interchange ones (made of a lone unlike energy)."""
     out = []
     for n, (model, _) in enumerate(by_model(report).items()):
-        if model.adjustable is Adjustable.UNLIKE:
-            continue
         pairs = [pair for pair in report.pairs if not pair.reason]
         true = np.concatenate([true_values(model, pair.task.mixture) for pair in pairs])
         fitted = np.concatenate([pair.tests[n].regression.values for pair in pairs])
+        if model.adjustable is Adjustable.UNLIKE:
+            like = np.array([np.diag(pair.task.mixture.pairs.well_depth).mean() for pair in pairs])
+            true, fitted = true - like, fitted - like
         out.append(Cloud(model.label, true, fitted))
     return out

@@ -52,6 +52,8 @@ class PairTask:
     z, accuracy : float
     closure : str
     rule : ShellRule
+    segment : float, optional
+        Diameter that r and q are counted in; the smaller sphere of the pair unless given.
     """
 
     mixture: Mixture
@@ -65,6 +67,7 @@ class PairTask:
     accuracy: float
     closure: str
     rule: ShellRule
+    segment: float | None = None
 
 
 @dataclass(frozen=True)
@@ -176,7 +179,7 @@ def examine_pair(task: PairTask) -> PairResult:
     thinner = _thinner(task, rows)
     tests = []
     for model in task.models:
-        fit = regress(model, task.mixture, temperature[inner], everywhere[inner], target[inner], task.z)
+        fit = regress(model, task.mixture, temperature[inner], everywhere[inner], target[inner], task.z, task.segment)
         warm = truth[-1].ln_gamma
         tests.append(_test(task, fit, temperature, everywhere, target, ratios, warm, rows, warmer, thinner))
     bars = np.concatenate([part.numerical_error for part in truth[:-1]])
@@ -223,12 +226,12 @@ def _test(
 
     def predicted(t: Array, x: Array) -> Array:
         with np.errstate(over="ignore", invalid="ignore"):
-            return fitted_ln_gamma(model, mixture, energies, t, x, task.z)
+            return fitted_ln_gamma(model, mixture, energies, t, x, task.z, task.segment)
 
     here = predicted(temperature, rows)
     dilute = np.where(rows == 0.0, here - target, np.nan)
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-        given = fitted_input(model, mixture, energies, temperature, rows, task.z)
+        given = fitted_input(model, mixture, energies, temperature, rows, task.z, task.segment)
         stated = model.ratios(given, reading_of(model))
         implied = np.column_stack([stated[:, 0, 1], stated[:, 1, 0]])
         off = np.log(implied / ratios)

@@ -127,7 +127,7 @@ def fit_study(
         If a worker process died.
     """
     tasks = pair_tasks(study, models)
-    ternary = _ternary_tasks(study, tasks)
+    ternary = ternary_tasks(study, tasks)
     total = len(tasks) + len(ternary)
     order = {executor.submit(examine_pair, task): n for n, task in enumerate([*tasks, *ternary])}
     results: dict[int, PairResult] = {}
@@ -165,7 +165,7 @@ def _ternary_mixture(study: Study) -> tuple[Mixture, float, list[tuple[float, ..
     return chosen.mixture, chosen.state.temperature, list(dict.fromkeys(rows)), eta
 
 
-def _ternary_tasks(study: Study, tasks: list[PairTask]) -> list[PairTask]:
+def ternary_tasks(study: Study, tasks: list[PairTask]) -> list[PairTask]:
     """Fits of the three pairs of that mixture, at its temperature and packing fraction."""
     found = _ternary_mixture(study)
     if found is None:
@@ -175,6 +175,7 @@ def _ternary_tasks(study: Study, tasks: list[PairTask]) -> list[PairTask]:
         replace(
             tasks[0], mixture=mixture.subset(both), labels={"pair": f"{both[0] + 1} + {both[1] + 1}"},
             temperatures=(temperature,), packing_fraction=eta, other_packing=THINNER * eta,
+            segment=float(mixture.diameter.min()),
         )
         for both in itertools.combinations(range(3), 2)
     ]  # fmt: skip
@@ -206,7 +207,7 @@ def _predict_ternary(study: Study, binaries: list[PairResult]) -> tuple[tuple[Te
         for (i, j), result in zip(itertools.combinations(range(3), 2), binaries, strict=True):
             pair = result.tests[n].energies
             energies[i, j], energies[j, i] = pair[0, 1], pair[1, 0]
-        z = binaries[0].task.z
-        predicted = fitted_ln_gamma(test.regression.model, mixture, energies, np.full(len(x), temperature), x, z)
-        tests.append(TernaryTest(test.regression.model, x, truth.ln_gamma, predicted))
+        model, task, warmth = test.regression.model, binaries[0].task, np.full(len(x), temperature)
+        predicted = fitted_ln_gamma(model, mixture, energies, warmth, x, task.z, task.segment)
+        tests.append(TernaryTest(model, x, truth.ln_gamma, predicted))
     return tuple(tests), what

@@ -93,6 +93,7 @@ def _write(out: Path, report: FitReport, body: dict) -> list[str]:  # type: igno
             curves.energy_clouds(report),
             f"{report.study.name}: energies of unlike against like contacts",
             "K" if units.real else "energy unit",
+            pair.task.z,
         ),
     }
     for name, figure in figures.items():

@@ -126,8 +126,8 @@ def ratio_parity(clouds: Sequence[Cloud], limit: float, heading: str) -> Figure:
     return figure
 
 
-def energy_figure(clouds: Sequence[Cloud], heading: str, unit: str) -> Figure:
-    """Fitted energies against those of one contact, one panel per model."""
+def energy_figure(clouds: Sequence[Cloud], heading: str, unit: str, z: float) -> Figure:
+    """Fitted energies against those of one contact, one panel per model; lines for one and for z/2 contacts."""
     columns = min(4, len(clouds))
     rows = -(-len(clouds) // columns)
     with look():
@@ -144,7 +144,9 @@ def energy_figure(clouds: Sequence[Cloud], heading: str, unit: str) -> Figure:
                     cloud.x, cloud.y, ls="", marker="o", ms=3.4, mew=0, alpha=0.7, color=LINES[0], label="pairs"
                 ),
                 *axis.plot(line, line, color=INK, lw=0.9, label="one contact (m = 1)"),
-                *axis.plot(line, 5.0 * line, color=INK, lw=0.9, ls=":", label="five contacts (m = z/2, z = 10)"),
+                *axis.plot(
+                    line, z / 2.0 * line, color=INK, lw=0.9, ls=":", label=f"z/2 = {z / 2.0:g} contacts (m = z/2)"
+                ),
             ]
             axis.axhline(0.0, color=GRID, lw=0.8, zorder=0)
             axis.axvline(0.0, color=GRID, lw=0.8, zorder=0)

@@ -17,7 +17,7 @@ from localcomp.figures.fits import energy_figure, fit_figure, ratio_parity
 from localcomp.fit import fitted_ln_gamma, pair_matrix, regress, true_values
 from localcomp.fitcurves import energy_clouds, fit_panels, pair_heading, ratio_clouds
 from localcomp.fitpair import GOOD_FIT, PairTask, examine_pair, unfitted
-from localcomp.fitstudy import FitReport, fit_study, pair_tasks
+from localcomp.fitstudy import FitReport, fit_study, pair_tasks, ternary_tasks
 from localcomp.models import MODELS, ActivityModel, Adjustable, ModelInput, Reading, ln_gamma
 from localcomp.neighbors import count_neighbors
 from localcomp.shells import WellEdge
@@ -174,7 +174,7 @@ def test_figures_of_fits(result) -> None:
     figures = [
         fit_figure(fit_panels(result), f"ln gamma, {pair_heading(result, ' K')}", ("1", "2")),
         ratio_parity(ratio_clouds(report), 0.15, "a study with a longer name: neighbours"),
-        energy_figure(energy_clouds(report), "a study with a longer name: energies", "energy unit"),
+        energy_figure(energy_clouds(report), "a study with a longer name: energies", "energy unit", 10.0),
     ]
     for figure in figures:
         assert clipped(figure) == []
@@ -183,6 +183,12 @@ def test_figures_of_fits(result) -> None:
     assert len(titles) == len(MODELS)
     assert all("rms" in title for title in titles)
     assert any(axis.get_xlabel() == "true, energy unit" for axis in figures[2].axes)
+    shown = {axis.get_title(): axis for axis in figures[2].axes if axis.get_visible()}
+    assert set(shown) == {model.label for model in MODELS}
+    one_fluid = shown["random mixing by pair volume"].lines[0]
+    assert one_fluid.get_xdata() == pytest.approx(true_values(BY_NAME["random-mole"], TASK.mixture))
+    other = energy_figure(energy_clouds(report), "heading", "K", 6.0).axes[0].lines[2]
+    assert np.asarray(other.get_ydata()) == pytest.approx(3.0 * np.asarray(other.get_xdata()))
 
 
 STUDY = """\
@@ -214,6 +220,32 @@ def test_a_study_and_its_ternary(write: Callable[..., Path]) -> None:
     assert np.isfinite(test.predicted).all()
     assert test.misfit.largest == pytest.approx(float(np.max(np.abs(test.predicted - test.truth))))
     assert report.pairs[0].task.other_packing == pytest.approx(0.36)
+
+
+THREE = Mixture([1.0, 1.3, 1.6], [1.0, 1.2, 1.4], k=0.05)
+
+
+@every
+@pytest.mark.parametrize("both", [(0, 1), (0, 2), (1, 2)])
+def test_a_ternary_without_one_species_is_the_pair(model: ActivityModel, both: tuple[int, int]) -> None:
+    """Exact, if r and q are counted in one segment; with the smaller sphere of each pair UNIQUAC fails in 2 + 3."""
+    values = np.array([1.3]) if model.adjustable is Adjustable.UNLIKE else np.array([-0.5, 0.2])
+    pair, energies, x = pair_matrix(model, values), np.full((3, 3), 0.4), np.zeros((1, 3))
+    energies[np.ix_(both, both)] = pair
+    x[0, list(both)] = 0.3, 0.7
+    ternary = fitted_ln_gamma(model, THREE, energies, np.array([2.0]), x, 10.0, 1.0)[:, list(both)]
+    alone = THREE.subset(both), pair, np.array([2.0]), x[:, list(both)], 10.0
+    assert fitted_ln_gamma(model, *alone, 1.0) == pytest.approx(ternary, abs=1e-12)
+    if model.name == "uniquac" and both == (1, 2):
+        assert fitted_ln_gamma(model, *alone) != pytest.approx(ternary, abs=1e-2)
+
+
+def test_pairs_of_a_ternary_are_fitted_in_its_segment(write: Callable[..., Path]) -> None:
+    text = STUDY.format(packing=0.4, composition="[0.1, 0.5]")
+    study = read_study(write(text.replace("size_ratio = [1.0, 1.2]", "size_ratio = [1.2, 1.4]"), "study.toml"))
+    tasks = ternary_tasks(study, pair_tasks(study, [BY_NAME["uniquac"]]))
+    assert [task.segment for task in tasks] == [1.0, 1.0, 1.0]
+    assert min(tasks[2].mixture.diameter) >= 1.2
 
 
 def test_two_densities_predict_each_other(write: Callable[..., Path]) -> None:
