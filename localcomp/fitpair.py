@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections.abc import Sequence
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -145,6 +146,8 @@ class PairResult:
     numerical_error : float
         Largest error bar of the true ln gamma.
     tests : tuple of ModelTest
+    left_out : tuple of float
+        Temperatures of the study without activity coefficients; not in `task` any more.
     """
 
     task: PairTask
@@ -155,6 +158,7 @@ class PairResult:
     ratios: Array = field(default_factory=lambda: np.zeros((0, 2)))
     numerical_error: float = float("nan")
     tests: tuple[ModelTest, ...] = ()
+    left_out: tuple[float, ...] = ()
 
 
 def examine_pair(task: PairTask) -> PairResult:
@@ -162,30 +166,28 @@ def examine_pair(task: PairTask) -> PairResult:
     x = np.array(task.compositions)
     rows = np.column_stack([x, 1.0 - x])
     warmer = WARMER * max(task.temperatures)
-    try:
-        truth = activity_at_packing(
-            task.mixture, [*task.temperatures, warmer], task.packing_fraction, rows, closure=task.closure,
-            accuracy=task.accuracy, routes=False,
-        )  # fmt: skip
-    except NoAnswer as reason:
-        return PairResult(task, str(reason))
+    truth, bars, reason = _truth(task, [*task.temperatures, warmer], task.packing_fraction, rows)
+    kept = np.array([bool(np.isfinite(part).any()) for part in truth[:-1]])
+    if not kept.any():
+        return PairResult(task, reason)
+    left_out = tuple(t for t, good in zip(task.temperatures, kept, strict=True) if not good)
+    task = replace(task, temperatures=tuple(t for t, good in zip(task.temperatures, kept, strict=True) if good))
     temperature = np.repeat(task.temperatures, len(x))
-    target = np.concatenate([part.ln_gamma for part in truth[:-1]])
+    target = np.concatenate(truth[:-1][kept])
     everywhere = np.tile(rows, (len(task.temperatures), 1))
     inner = (everywhere[:, 0] > 0.0) & (everywhere[:, 0] < 1.0)
     if int(np.isfinite(target[inner]).sum()) <= 2:
         return PairResult(task, "no activity coefficients to fit: the paths cross the two-phase region")
     ratios = _true_ratios(task, temperature, everywhere)
-    thinner = _thinner(task, rows)
+    thinner = np.concatenate(_truth(task, task.temperatures, task.other_packing, rows)[0])
     tests = []
     for model in task.models:
         fit = regress(model, task.mixture, temperature[inner], everywhere[inner], target[inner], task.z, task.segment)
-        warm = truth[-1].ln_gamma
-        tests.append(_test(task, fit, temperature, everywhere, target, ratios, warm, rows, warmer, thinner))
-    bars = np.concatenate([part.numerical_error for part in truth[:-1]])
+        tests.append(_test(task, fit, temperature, everywhere, target, ratios, truth[-1], rows, warmer, thinner))
+    bars = bars[:-1][kept]
     return PairResult(
         task, "", temperature, everywhere[:, 0], target, ratios,
-        float(np.nanmax(bars)) if np.isfinite(bars).any() else float("nan"), tuple(tests),
+        float(np.nanmax(bars)) if np.isfinite(bars).any() else float("nan"), tuple(tests), left_out,
     )  # fmt: skip
 
 
@@ -205,16 +207,20 @@ def _true_ratios(task: PairTask, temperature: Array, rows: Array) -> Array:
     return out
 
 
-def _thinner(task: PairTask, rows: Array) -> Array:
-    """True ln gamma at the other packing fraction, shape (n, 2)."""
+def _truth(task: PairTask, temperatures: Sequence[float], eta: float, rows: Array) -> tuple[Array, Array, str]:
+    """True ln gamma and error bars, each of shape (temperatures, m, 2), and why some isotherm is NaN throughout."""
     try:
         found = activity_at_packing(
-            task.mixture, list(task.temperatures), task.other_packing, rows, closure=task.closure,
-            accuracy=task.accuracy, routes=False,
-        )  # fmt: skip
-    except NoAnswer:
-        return np.full((len(task.temperatures) * len(rows), 2), np.nan)
-    return np.concatenate([part.ln_gamma for part in found])
+            task.mixture, list(temperatures), eta, rows, closure=task.closure, accuracy=task.accuracy, routes=False
+        )
+    except NoAnswer as reason:  # a pure liquid is missing at one temperature: the others one by one
+        if len(temperatures) == 1:
+            nothing = np.full((1, *rows.shape), np.nan)
+            return nothing, nothing, str(reason)
+        parts = [_truth(task, [t], eta, rows) for t in temperatures]
+        reasons = [part[2] for part in parts if part[2]]
+        return np.concatenate([part[0] for part in parts]), np.concatenate([part[1] for part in parts]), reasons[0]
+    return np.stack([part.ln_gamma for part in found]), np.stack([part.numerical_error for part in found]), ""
 
 
 def _test(

@@ -159,6 +159,7 @@ def as_json(report: FitReport) -> dict[str, Any]:
                 **pair.task.labels,
                 "packing_fraction": pair.task.packing_fraction,
                 "temperatures": list(pair.task.temperatures),
+                "temperatures_left_out": list(pair.left_out),
                 "reason": pair.reason,
                 "numerical_error": pair.numerical_error,
                 "fits": [

@@ -53,4 +53,9 @@ def print_fits(report: FitReport) -> None:
         if pair.reason:
             names = " + ".join(pair.task.mixture.names)
             out.print(f"{names}, eta {pair.task.packing_fraction:g}: {pair.reason}", style="yellow", markup=False)
+        elif pair.left_out:
+            names, cold = " + ".join(pair.task.mixture.names), ", ".join(f"{t:g}" for t in pair.left_out)
+            out.print(
+                f"{names}, eta {pair.task.packing_fraction:g}: nothing to fit at {cold}", style="yellow", markup=False
+            )
     out.print(CAUTION, style="dim")

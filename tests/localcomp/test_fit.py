@@ -6,6 +6,7 @@ import csv
 import io
 import json
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -246,6 +247,20 @@ def test_pairs_of_a_ternary_are_fitted_in_its_segment(write: Callable[..., Path]
     tasks = ternary_tasks(study, pair_tasks(study, [BY_NAME["uniquac"]]))
     assert [task.segment for task in tasks] == [1.0, 1.0, 1.0]
     assert min(tasks[2].mixture.diameter) >= 1.2
+
+
+def test_a_temperature_without_pure_liquids_is_left_out() -> None:
+    """Too cold for a fluid at this density; the warmer isotherm is fitted as if alone."""
+    models = (BY_NAME["quasi-chemical"],)
+    alone = examine_pair(replace(TASK, temperatures=(2.5,), packing_fraction=0.15, models=models))
+    found = examine_pair(replace(TASK, temperatures=(0.6, 2.5), packing_fraction=0.15, models=models))
+    assert found.left_out == (0.6,)
+    assert found.task.temperatures == (2.5,)
+    assert found.tests[0].regression.values == pytest.approx(alone.tests[0].regression.values, abs=1e-9)
+    assert np.isfinite(found.tests[0].other_temperature.rms)
+    none = examine_pair(replace(TASK, temperatures=(0.5, 0.6), packing_fraction=0.15, models=models))
+    assert "no solution" in none.reason
+    assert none.tests == ()
 
 
 def test_two_densities_predict_each_other(write: Callable[..., Path]) -> None:
