@@ -9,7 +9,7 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.axis import XAxis, YAxis
 from matplotlib.figure import Figure
-from matplotlib.ticker import FuncFormatter, NullFormatter
+from matplotlib.ticker import FuncFormatter, MaxNLocator, NullFormatter
 from numpy.typing import NDArray
 
 from localcomp.figures.style import DASHES, FOUND, GRID, INK, LINES, SECOND, fit, look
@@ -118,10 +118,11 @@ def plain_log(axis: XAxis | YAxis, most: int = 8) -> None:
         ticks = [tick for tick in choices if low <= tick <= high]
         if len(ticks) <= most:
             break
-    if len(ticks) >= 2:
-        axis.set_ticks(ticks)
-        axis.set_major_formatter(FuncFormatter(lambda v, _: f"{v:g}"))
-        axis.set_minor_formatter(NullFormatter())
+    if len(ticks) < 2:  # a narrow axis
+        ticks = [tick for tick in MaxNLocator(most - 1).tick_values(low, high) if low <= tick <= high]
+    axis.set_ticks(ticks)
+    axis.set_major_formatter(FuncFormatter(lambda v, _: f"{v:g}"))
+    axis.set_minor_formatter(NullFormatter())
 
 
 TICKS = (0.1, 0.2, 0.3, 0.5, 0.7, 1.0, 1.5, 2.0, 3.0, 5.0, 7.0, 10.0, 20.0, 50.0)

@@ -14,7 +14,7 @@ import pytest
 
 from localcomp.activity import activity_at_packing
 from localcomp.executors import SerialExecutor
-from localcomp.figures.fits import energy_figure, fit_figure, ratio_parity
+from localcomp.figures.fits import Cloud, energy_figure, fit_figure, ratio_parity
 from localcomp.fit import fitted_ln_gamma, pair_matrix, regress, true_values
 from localcomp.fitcurves import energy_clouds, fit_panels, pair_heading, ratio_clouds
 from localcomp.fitpair import GOOD_FIT, PairTask, examine_pair, unfitted
@@ -261,6 +261,18 @@ def test_a_temperature_without_pure_liquids_is_left_out() -> None:
     none = examine_pair(replace(TASK, temperatures=(0.5, 0.6), packing_fraction=0.15, models=models))
     assert "no solution" in none.reason
     assert none.tests == ()
+
+
+@pytest.mark.parametrize(("low", "high"), [(0.85, 1.2), (0.97, 1.03), (0.3, 4.0)])
+def test_ratio_axes_have_plain_numbers_however_narrow(low: float, high: float) -> None:
+    cloud = Cloud("one", np.array([low, high]), np.array([low, high]))
+    figure = ratio_parity([cloud, cloud], 0.15, "heading")
+    figure.draw_without_rendering()
+    for axis in (figure.axes[0].xaxis, figure.axes[0].yaxis):
+        left, right = axis.get_view_interval()
+        shown = [float(t.label1.get_text()) for t in axis.get_major_ticks() if left <= t.get_loc() <= right]
+        assert 2 <= len(shown) <= 5
+        assert not any(t.label1.get_text() for t in axis.get_minor_ticks())
 
 
 def test_two_densities_predict_each_other(write: Callable[..., Path]) -> None:
